@@ -1,4 +1,5 @@
 """Constants of the physics."""
 
-# Standard acceleration of free fall, CGPM 1901.
-GRAVITY_M_S2 = 9.80665
+from suspended_ctrl.rig.constants import GRAVITY_M_S2
+
+__all__ = ['GRAVITY_M_S2']
