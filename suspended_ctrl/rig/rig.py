@@ -233,7 +233,15 @@ class KeepIn:
 
 @dataclass(frozen=True, eq=False)
 class Rig:
-    """A whole rig; see the fields' own classes."""
+    """
+    A whole rig; see the fields' own classes.
+
+    Attributes
+    ----------
+    emergency_stop_required : bool
+        Whether silence of the emergency stop counts as a stop.
+
+    """
 
     name: str
     body: Body
@@ -242,3 +250,4 @@ class Rig:
     carrier: Carrier
     sensors: Sensors
     keep_in: KeepIn
+    emergency_stop_required: bool = True

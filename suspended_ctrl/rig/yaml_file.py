@@ -1,0 +1,166 @@
+"""Read a YAML file that a pydantic model describes; every problem is one line."""
+
+import os
+from pathlib import Path
+from typing import Any, TypeVar
+
+from pydantic import BaseModel, ValidationError
+
+from suspended_ctrl.rig.errors import InputError
+from suspended_ctrl.rig.key_hints import unit_words
+from suspended_ctrl.rig.yaml_tree import Path as KeyPath
+from suspended_ctrl.rig.yaml_tree import Tree, key_text, parse, value_text
+
+Model = TypeVar('Model', bound=BaseModel)
+
+_MISSING = object()
+
+
+def read_text(path: str | os.PathLike[str]) -> str:
+    """
+    Read a text file.
+
+    Parameters
+    ----------
+    path : path-like
+
+    Returns
+    -------
+    str
+
+    Raises
+    ------
+    InputError
+        If it is missing, no file, not readable or not UTF-8.
+
+    """
+    file = Path(path)
+    try:
+        return file.read_text(encoding='utf-8')
+    except FileNotFoundError:
+        raise InputError(f'{file}: no such file: a readable YAML file') from None
+    except IsADirectoryError:
+        raise InputError(f'{file}: a directory: a readable YAML file') from None
+    except UnicodeDecodeError as error:
+        raise InputError(f'{file}: not text in UTF-8 (byte {error.start}): a YAML file') from None
+    except (OSError, ValueError) as error:
+        reason = getattr(error, 'strerror', None) or str(error)
+        raise InputError(f'{file}: {reason}: a readable YAML file') from None
+
+
+def read_file(path: str | os.PathLike[str], model: type[Model]) -> Model:
+    """
+    Read and check a YAML file.
+
+    Parameters
+    ----------
+    path : path-like
+    model : subclass of pydantic.BaseModel
+        Best built of ``Section`` and the types beside it. Lists arrive as tuples.
+
+    Returns
+    -------
+    Model
+        An instance of ``model``.
+
+    Raises
+    ------
+    InputError
+        ``file:line: key: value X: what is allowed`` for the first problem by line, then how many
+        more there are.
+
+    """
+    return read_tree(parse(read_text(path), os.fspath(path)), os.fspath(path), model)
+
+
+def read_tree(tree: Tree, file: str, model: type[Model]) -> Model:
+    """
+    Check values that were parsed already.
+
+    Parameters
+    ----------
+    tree : Tree
+    file : str
+        Its name, for messages.
+    model : subclass of pydantic.BaseModel
+
+    Returns
+    -------
+    Model
+        An instance of ``model``.
+
+    Raises
+    ------
+    InputError
+        As ``read_file``.
+
+    """
+    try:
+        return model.model_validate(tree.value)
+    except ValidationError as error:
+        problems = sorted((_problem(tree, dict(item)) for item in
+                           error.errors(include_url=False)), key=lambda found: found[0])
+    line, key, value, allowed = problems[0]
+    more = f' (and {len(problems) - 1} more)' if len(problems) > 1 else ''
+    raise InputError(f'{file}:{line}: {key}: value {value}: {allowed}{more}')
+
+
+def _problem(tree: Tree, error: dict[str, Any]) -> tuple[int, str, str, str]:
+    """Line, key, value and what is allowed, of one of pydantic's errors."""
+    context = error.get('ctx', {})
+    loc = (*error['loc'], *context.get('key', ())) if error['type'] == 'refused' else error['loc']
+    path, value = _locate(tree.value, loc)
+    if error['type'] == 'refused':
+        value = context['value']
+    text = 'missing' if value is _MISSING else value_text(value)
+    return tree.line(path), key_text(path), text, _allowed(error, context, path, value)
+
+
+def _locate(data: Any, loc: tuple[Any, ...]) -> tuple[KeyPath, Any]:
+    """Path in the file and value there; tags of unions, which the file does not hold, left out."""
+    path: KeyPath = ()
+    for i, part in enumerate(loc):
+        if isinstance(data, dict) and part in data:
+            data = data[part]
+        elif isinstance(data, tuple) and isinstance(part, int) and part < len(data):
+            data = data[part]
+        elif i == len(loc) - 1:
+            return (*path, part), _MISSING
+        else:
+            continue
+        path = (*path, part)
+    return path, data
+
+
+_KINDS = {'string_type': 'text', 'bool_type': 'true or false', 'int_type': 'a whole number',
+          'tuple_type': 'a list', 'list_type': 'a list', 'dict_type': 'a mapping',
+          'finite_number': 'a finite number'}
+_BOUNDS = {'greater_than': ('gt', 'above'), 'greater_than_equal': ('ge', 'at least'),
+           'less_than': ('lt', 'below'), 'less_than_equal': ('le', 'at most')}
+
+
+def _allowed(error: dict[str, Any], context: dict[str, Any], path: KeyPath, value: Any) -> str:
+    kind = error['type']
+    unit = unit_words(next((part for part in reversed(path) if isinstance(part, str)), ''))
+    in_unit = f' in {unit}' if unit and not unit.startswith('a ') else ''
+    if kind == 'refused':
+        return str(context['allowed'])
+    if kind == 'missing':
+        return f'required{in_unit and ","}{in_unit}'
+    if kind in _BOUNDS:
+        name, words = _BOUNDS[kind]
+        return f'a number {words} {context[name]:g}{in_unit}'
+    if kind == 'float_type':
+        bare = ', without quotes and without a unit' if isinstance(value, str) else ''
+        return f'a number{in_unit}{bare}'
+    if kind in ('too_short', 'too_long'):
+        bound, words = ('min_length', 'at least') if kind == 'too_short' else ('max_length',
+                                                                              'at most')
+        return f'a list of {words} {context[bound]}, there are {context["actual_length"]}'
+    if kind == 'literal_error':
+        return f'one of {context["expected"]}'
+    if kind.startswith('union_tag'):
+        return f'{context["discriminator"]} must be one of {context.get("expected_tags", "")}'
+    if kind == 'string_pattern_mismatch':
+        return 'a name of letters, digits, blanks, dots, - and _'
+    return _KINDS.get(kind, str(error['msg']))
