@@ -5,6 +5,7 @@ import os
 import numpy as np
 
 from suspended_ctrl.rig.frozen import Array, frozen
+from suspended_ctrl.rig.parts import RotorSection
 from suspended_ctrl.rig.rig import (
     AXIS_DIRECTION_MAP,
     Body,
@@ -20,7 +21,7 @@ from suspended_ctrl.rig.rig import (
     Tether,
     TetherLoadSensor,
 )
-from suspended_ctrl.rig.schema import RigFile, RotorSection
+from suspended_ctrl.rig.schema import RigFile
 from suspended_ctrl.rig.shared_files import find_file
 from suspended_ctrl.rig.yaml_file import read_file
 
@@ -76,15 +77,7 @@ def _knots(rotor: RotorSection, count: int) -> tuple[Array, Array]:
     Knots that are wanting are put inside the last piece, on its line in squared speed: neither
     the curve nor its top, from which torque per thrust is taken, changes by that.
     """
-    if rotor.thrust_curve is None:
-        assert rotor.thrust_coefficient_n_s2 is not None
-        speed = np.array([0.0, rotor.speed_max_rad_s])
-        thrust = rotor.thrust_coefficient_n_s2 * speed ** 2
-    else:
-        speed = np.array(rotor.thrust_curve.speed_rad_s)
-        thrust = np.array(rotor.thrust_curve.thrust_n)
-        if speed[0] > 0.0:
-            speed, thrust = np.append(0.0, speed), np.append(0.0, thrust)
+    speed, thrust = rotor.knots()
     wanting = count - len(speed)
     if wanting > 0:
         share = np.arange(1, wanting + 1) / (wanting + 1)
@@ -96,7 +89,7 @@ def _knots(rotor: RotorSection, count: int) -> tuple[Array, Array]:
 
 
 def _rotors(rotors: tuple[RotorSection, ...]) -> Rotors:
-    count = max(len(_knots(rotor, 2)[0]) for rotor in rotors)
+    count = max(len(rotor.knots()[0]) for rotor in rotors)
     knots = [_knots(rotor, count) for rotor in rotors]
     reversible = np.array([rotor.reversible for rotor in rotors])
     reversible.setflags(write=False)
@@ -134,7 +127,9 @@ def _carrier(file: RigFile) -> Carrier:
 def _sensors(file: RigFile) -> Sensors:
     given = file.sensors
     pose, imu, speeds = given.pose, given.imu, given.rotor_states
-    has_speeds = speeds is not None and speeds.telemetry
+    telemetry = None
+    if speeds is not None and speeds.rate_hz is not None and speeds.noise_fraction is not None:
+        telemetry = RotorTelemetry(speeds.rate_hz, speeds.noise_fraction)
     return Sensors(
         pose=PoseSensor(pose.rate_hz, pose.latency_s, pose.position_noise_m,
                         pose.attitude_noise_rad, frozen(pose.position_m, 3),
@@ -142,8 +137,7 @@ def _sensors(file: RigFile) -> Sensors:
         imu=None if imu is None else ImuSensor(
             imu.rate_hz, imu.rate_noise_rad_s, imu.rate_bias_rad_s, imu.force_noise_m_s2,
             imu.force_bias_m_s2, frozen(imu.position_m, 3), frozen(imu.rotation_wxyz, 4)),
-        rotor_states=RotorTelemetry(speeds.rate_hz, speeds.noise_fraction)
-        if has_speeds else None,
+        rotor_states=telemetry if speeds is not None and speeds.telemetry else None,
         # Without axes nothing is measured there, whatever the file says of its quality.
         carrier_states=None if given.carrier_states is None or not file.axes()
         else CarrierSensor(given.carrier_states.rate_hz, given.carrier_states.noise_m),

@@ -13,10 +13,13 @@ UNIT_WORDS = {
     's': 'seconds', 'seconds': 'seconds', 'fraction': 'a fraction of one',
 }
 # The units of the keys above and those that people write instead.
-_UNIT_TOKENS = frozenset(
-    'kg g mg t lb lbs oz m mm cm km um in inch ft s ms us min rad mrad deg degrees degree hz khz '
-    'rpm rps n kn mn lbf nm nmm m2 cm2 mm2 s2 kgm2 gmm2 per metres meters millimetres seconds '
-    'newtons kilograms grams radians hertz'.split())
+_UNIT_TOKENS = frozenset((
+    'kg', 'g', 'mg', 't', 'lb', 'lbs', 'oz', 'm', 'mm', 'cm', 'km', 'um', 'in', 'inch',
+    'ft', 's', 'ms', 'us', 'min', 'rad', 'mrad', 'deg', 'degrees', 'degree', 'hz', 'khz',
+    'rpm', 'rps', 'n', 'kn', 'mn', 'lbf', 'nm', 'nmm', 'm2', 'cm2', 'mm2', 's2', 'kgm2',
+    'gmm2', 'per', 'metres', 'meters', 'millimetres', 'seconds', 'newtons', 'kilograms',
+    'grams', 'radians', 'hertz',
+))
 # Similarity from which a key counts as a slip of another; difflib's own default.
 _SIMILAR = 0.6
 
@@ -41,7 +44,7 @@ def unit_words(key: str) -> str:
 
 
 def nearest_key(key: str, allowed: Collection[str]) -> str | None:
-    """Key of ``allowed`` that was most likely meant by ``key``: same stem, else similar letters."""
+    """Key of ``allowed`` that ``key`` most likely means: same stem, else similar letters."""
     stem, _ = _split(key)
     same = [name for name in allowed if _split(name)[0] == stem]
     if same:

@@ -165,7 +165,7 @@ class Carrier:
 
 @dataclass(frozen=True, eq=False)
 class PoseSensor:
-    """Motion capture: rate, latency, 1-sigma noise each axis, pose of the marker body in base_link."""
+    """Motion capture: rate, latency, 1-sigma noise each axis, pose of its body in base_link."""
 
     rate_hz: float
     latency_s: float
@@ -177,7 +177,7 @@ class PoseSensor:
 
 @dataclass(frozen=True, eq=False)
 class ImuSensor:
-    """Gyroscope and accelerometer: rate, 1-sigma noise a sample, bias spread, pose in base_link."""
+    """Gyroscope, accelerometer: rate, 1-sigma noise a sample, bias spread, pose in base_link."""
 
     rate_hz: float
     rate_noise_rad_s: float

@@ -1,7 +1,7 @@
 """Building blocks of the models that say what a file may hold."""
 
-import math
 from collections.abc import Mapping
+import math
 from typing import Annotated, Any, NoReturn
 
 from pydantic import AfterValidator, BaseModel, ConfigDict, Field, model_validator

@@ -1,8 +1,8 @@
 """Where the files that come with the package are."""
 
 import os
-import sys
 from pathlib import Path
+import sys
 
 from suspended_ctrl.rig.errors import InputError
 

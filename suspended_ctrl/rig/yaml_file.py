@@ -8,8 +8,8 @@ from pydantic import BaseModel, ValidationError
 
 from suspended_ctrl.rig.errors import InputError
 from suspended_ctrl.rig.key_hints import unit_words
+from suspended_ctrl.rig.yaml_tree import key_text, parse, Tree, value_text
 from suspended_ctrl.rig.yaml_tree import Path as KeyPath
-from suspended_ctrl.rig.yaml_tree import Tree, key_text, parse, value_text
 
 Model = TypeVar('Model', bound=BaseModel)
 
@@ -120,9 +120,9 @@ def _locate(data: Any, loc: tuple[Any, ...]) -> tuple[KeyPath, Any]:
     """Path in the file and value there; tags of unions, which the file does not hold, left out."""
     path: KeyPath = ()
     for i, part in enumerate(loc):
-        if isinstance(data, dict) and part in data:
-            data = data[part]
-        elif isinstance(data, tuple) and isinstance(part, int) and part < len(data):
+        here = (isinstance(data, dict) and part in data) or (
+            isinstance(data, tuple) and isinstance(part, int) and part < len(data))
+        if here:
             data = data[part]
         elif i == len(loc) - 1:
             return (*path, part), _MISSING

@@ -1,7 +1,7 @@
 """YAML text as plain values, with the line of every one."""
 
-import re
 from dataclasses import dataclass
+import re
 from typing import Any
 
 from ruamel.yaml import YAML
