@@ -46,6 +46,25 @@ def minimum_jerk(duration_s: float) -> Progress:
     return Progress(time, s, s_dot, s_ddot)
 
 
+def trapezoid(duration_s: float, peak: float) -> Progress:
+    """
+    Trapezoidal speed from rest to rest, peak rate ``peak`` between 1 / T and 2 / T.
+
+    Equal ramps; ``1 / T`` would be a rectangle, ``2 / T`` is a triangle (Biagiotti and Melchiorri,
+    Trajectory Planning for Automatic Machines and Robots, 2008).
+    """
+    time = sample_times(duration_s)
+    ramp = duration_s - 1.0 / peak
+    bend = peak / ramp
+    left = np.minimum(time, duration_s - time)
+    near = np.where(left < ramp, 0.5 * bend * left ** 2, peak * (left - 0.5 * ramp))
+    s = np.where(time <= 0.5 * duration_s, near, 1.0 - near)
+    s_dot = np.minimum(bend * left, peak)
+    rising = np.where(time < ramp, bend, 0.0)
+    s_ddot = np.where(time > duration_s - ramp, -bend, rising)
+    return Progress(time, s, s_dot, s_ddot)
+
+
 def straight(progress: Progress, position_from: Array, position_to: Array, quaternion_from: Array,
              quaternion_to: Array) -> Reference:
     """
