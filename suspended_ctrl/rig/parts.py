@@ -1,7 +1,7 @@
 """What the sections of a rig file may hold: keys, types and ranges."""
 
 from collections.abc import Sequence
-from typing import Annotated, Any, Literal
+from typing import Annotated, Any
 
 import numpy as np
 from pydantic import BeforeValidator, Field, model_validator
@@ -9,6 +9,7 @@ from pydantic import BeforeValidator, Field, model_validator
 from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.section import (
     Direction,
+    MAGNITUDE_MAX,
     Name,
     NonNegative,
     NonNegative3,
@@ -18,6 +19,7 @@ from suspended_ctrl.rig.section import (
     refuse,
     Rotation,
     Section,
+    Sign,
     Vector3,
 )
 
@@ -32,7 +34,7 @@ def _inertia(value: Any) -> Any:
     if (isinstance(value, Sequence) and len(value) == 3
             and all(isinstance(x, int | float) and not isinstance(x, bool) for x in value)):
         for i, moment in enumerate(value):
-            if not moment > 0.0:
+            if not 0.0 < moment <= MAGNITUDE_MAX:
                 refuse(i, moment, 'a moment of inertia above 0 in kilogram square metres')
         return tuple(tuple(float(x) if i == j else 0.0 for j in range(3))
                      for i, x in enumerate(value))
@@ -104,7 +106,7 @@ class RotorSection(Section):
     thrust_coefficient_n_s2: Positive | None = None
     thrust_curve: ThrustCurveSection | None = None
     torque_coefficient_nm_s2: NonNegative
-    spin: Literal[1, -1]
+    spin: Sign
     speed_min_rad_s: NonNegative
     speed_max_rad_s: Positive
     reversible: bool
@@ -116,7 +118,7 @@ class RotorSection(Section):
         curve = self.thrust_curve
         if self.thrust_coefficient_n_s2 is None and curve is None:
             refuse('thrust_coefficient_n_s2', None, 'a number above 0 in newtons per (rad/s)^2, '
-                   'or a thrust_curve beside it left out')
+                   'or else a thrust_curve')
         if self.thrust_coefficient_n_s2 is not None and curve is not None:
             refuse('thrust_coefficient_n_s2', self.thrust_coefficient_n_s2,
                    'either this or thrust_curve, not both')

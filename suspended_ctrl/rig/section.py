@@ -4,7 +4,7 @@ from collections.abc import Mapping
 import math
 from typing import Annotated, Any, NoReturn
 
-from pydantic import AfterValidator, BaseModel, ConfigDict, Field, model_validator
+from pydantic import AfterValidator, BaseModel, BeforeValidator, ConfigDict, Field, model_validator
 from pydantic_core import PydanticCustomError
 
 from suspended_ctrl.rig.key_hints import unknown_key_hint
@@ -25,7 +25,7 @@ def refuse(key: Key | tuple[Key, ...], value: object, allowed: str) -> NoReturn:
         Where the value stands, from the section or list that the validator belongs to; an empty
         tuple for that itself.
     value : object
-        What stands there.
+        What stands there; text is shown in place of what the file holds.
     allowed : str
         What may stand there.
 
@@ -59,6 +59,13 @@ class Section(BaseModel):
         return data
 
 
+def _sign(value: Any) -> Any:
+    # Literal[1, -1] would let true pass, which equals 1.
+    if type(value) is not int or abs(value) != 1:
+        refuse((), value, '1 or -1')
+    return value
+
+
 def _ordered(pair: tuple[float, ...]) -> tuple[float, ...]:
     if not pair[0] < pair[1]:
         refuse((), pair, '[lower, upper] with lower below upper')
@@ -79,6 +86,7 @@ Number = Annotated[float, Field(ge=-MAGNITUDE_MAX, le=MAGNITUDE_MAX)]
 Positive = Annotated[float, Field(gt=0.0, le=MAGNITUDE_MAX)]
 NonNegative = Annotated[float, Field(ge=0.0, le=MAGNITUDE_MAX)]
 UnitFraction = Annotated[float, Field(ge=0.0, le=1.0)]
+Sign = Annotated[int, BeforeValidator(_sign)]
 Count = Annotated[int, Field(ge=1)]
 Name = Annotated[str, Field(pattern=r'^\w[\w .-]{0,63}$')]
 Vector3 = Annotated[tuple[Number, ...], Field(min_length=3, max_length=3)]

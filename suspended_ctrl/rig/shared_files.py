@@ -58,14 +58,15 @@ def find_file(path_or_name: str | os.PathLike[str], kind: str,
     Raises
     ------
     InputError
-        If a bare name is neither a file of that kind nor a file at that place. Whether a path
-        exists is left to whoever reads it.
+        If it is empty, or a bare name is neither a file of that kind nor a file at that place.
+        Whether a path exists is left to whoever reads it.
 
     """
     given = os.fspath(path_or_name)
+    if not given:
+        raise InputError(f"value '': a path, or a name of a file in {config_folder() / kind}")
     path = Path(relative_to or '') / given
-    is_name = given != '' and Path(given).name == given and Path(given).suffix not in ('.yaml',
-                                                                                      '.yml')
+    is_name = Path(given).name == given and Path(given).suffix not in ('.yaml', '.yml')
     if not is_name:
         return path
     folder = config_folder() / kind

@@ -98,45 +98,61 @@ def read_tree(tree: Tree, file: str, model: type[Model]) -> Model:
     try:
         return model.model_validate(tree.value)
     except ValidationError as error:
-        problems = sorted((_problem(tree, dict(item)) for item in
-                           error.errors(include_url=False)), key=lambda found: found[0])
-    line, key, value, allowed = problems[0]
+        # Alternatives of a union fail one by one at the same place: one problem together.
+        problems: dict[KeyPath, tuple[str, list[str]]] = {}
+        for item in error.errors(include_url=False):
+            path, value, allowed = _problem(tree, dict(item))
+            problems.setdefault(path, (value, []))[1].append(allowed)
+    first = min(problems, key=tree.line)
+    value, sentences = problems[first]
     more = f' (and {len(problems) - 1} more)' if len(problems) > 1 else ''
-    raise InputError(f'{file}:{line}: {key}: value {value}: {allowed}{more}')
+    raise InputError(f'{file}:{tree.line(first)}: {key_text(first)}: value {value}: '
+                     f'{" or ".join(dict.fromkeys(sentences))}{more}')
 
 
-def _problem(tree: Tree, error: dict[str, Any]) -> tuple[int, str, str, str]:
-    """Line, key, value and what is allowed, of one of pydantic's errors."""
-    context = error.get('ctx', {})
-    loc = (*error['loc'], *context.get('key', ())) if error['type'] == 'refused' else error['loc']
+def _problem(tree: Tree, error: dict[str, Any]) -> tuple[KeyPath, str, str]:
+    """Path, value and what is allowed, of one of pydantic's errors."""
+    kind, context = error['type'], error.get('ctx', {})
+    loc: KeyPath = error['loc']
+    last: KeyPath = ()
+    if kind == 'missing':
+        loc, last = loc[:-1], loc[-1:]
+    elif kind == 'refused':
+        last = context['key']
+    elif kind.startswith('union_tag'):
+        last = (context['discriminator'].strip("'"),)
     path, value = _locate(tree.value, loc)
-    if error['type'] == 'refused':
-        value = context['value']
+    for part in last:
+        path = (*path, part)
+        value = _child(value, part)
+    if kind == 'refused' and (value is _MISSING or isinstance(context['value'], str)):
+        value = context['value'] if context['value'] is not None else _MISSING
     text = 'missing' if value is _MISSING else value_text(value)
-    return tree.line(path), key_text(path), text, _allowed(error, context, path, value)
+    return path, text, _allowed(error, context, path, value)
+
+
+def _child(data: Any, part: Any) -> Any:
+    if isinstance(data, dict):
+        return data.get(part, _MISSING)
+    here = isinstance(data, tuple) and isinstance(part, int) and part < len(data)
+    return data[part] if here else _MISSING
 
 
 def _locate(data: Any, loc: tuple[Any, ...]) -> tuple[KeyPath, Any]:
     """Path in the file and value there; tags of unions, which the file does not hold, left out."""
     path: KeyPath = ()
-    for i, part in enumerate(loc):
-        here = (isinstance(data, dict) and part in data) or (
-            isinstance(data, tuple) and isinstance(part, int) and part < len(data))
-        if here:
-            data = data[part]
-        elif i == len(loc) - 1:
-            return (*path, part), _MISSING
-        else:
-            continue
-        path = (*path, part)
+    for part in loc:
+        child = _child(data, part)
+        if child is not _MISSING:
+            path, data = (*path, part), child
     return path, data
 
 
 _KINDS = {'string_type': 'text', 'bool_type': 'true or false', 'int_type': 'a whole number',
           'tuple_type': 'a list', 'list_type': 'a list', 'dict_type': 'a mapping',
           'finite_number': 'a finite number'}
-_BOUNDS = {'greater_than': ('gt', 'above'), 'greater_than_equal': ('ge', 'at least'),
-           'less_than': ('lt', 'below'), 'less_than_equal': ('le', 'at most')}
+_BOUNDS = {'greater_than': ('gt', 'above'), 'greater_than_equal': ('ge', 'of at least'),
+           'less_than': ('lt', 'below'), 'less_than_equal': ('le', 'of at most')}
 
 
 def _allowed(error: dict[str, Any], context: dict[str, Any], path: KeyPath, value: Any) -> str:
@@ -160,7 +176,7 @@ def _allowed(error: dict[str, Any], context: dict[str, Any], path: KeyPath, valu
     if kind == 'literal_error':
         return f'one of {context["expected"]}'
     if kind.startswith('union_tag'):
-        return f'{context["discriminator"]} must be one of {context.get("expected_tags", "")}'
+        return f'one of {context["expected_tags"]}' if 'expected_tags' in context else 'required'
     if kind == 'string_pattern_mismatch':
         return 'a name of letters, digits, blanks, dots, - and _'
     return _KINDS.get(kind, str(error['msg']))

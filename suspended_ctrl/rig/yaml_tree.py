@@ -132,9 +132,11 @@ def _syntax(file: str, text: str, error: YAMLError) -> InputError:
     problem = str(getattr(error, 'problem', None) or error)
     if not isinstance(error, MarkedYAMLError) or mark is None:
         return InputError(f'{file}:1: not YAML: {problem}')
-    twice = re.match(r'found duplicate key "(.*?)" with value', problem, re.DOTALL)
+    twice = re.match(r'found duplicate key "(.*?)" with value "(.*)" \(original value', problem,
+                     re.DOTALL)
     if isinstance(error, DuplicateKeyError) and twice:
-        return InputError(f'{file}:{mark.line + 1}: {twice[1]}: value given twice: once')
+        return InputError(f'{file}:{mark.line + 1}: {twice[1]}: value {twice[2][:80]}: each key '
+                          'once, this one is there already')
     rows = text.splitlines()
     row = rows[mark.line].strip() if mark.line < len(rows) else 'end of file'
     return InputError(f'{file}:{mark.line + 1}: not YAML: value {value_text(row)}: {problem}')
@@ -164,8 +166,10 @@ def parse(text: str, file: str) -> Tree:
         root = YAML(typ='rt').load(text)
     except YAMLError as error:
         raise _syntax(file, text, error) from error
-    except (ValueError, OverflowError, RecursionError) as error:
-        raise InputError(f'{file}:1: not YAML: {error}') from error
+    except RecursionError as error:
+        raise InputError(f'{file}:1: not readable: nested too deep') from error
+    except (ValueError, OverflowError) as error:
+        raise InputError(f'{file}:1: not readable: {error}') from error
     if not isinstance(root, CommentedMap):
         what = 'the file is empty' if root is None else f'value {value_text(root)}'
         raise InputError(f'{file}:1: {what}: a mapping, lines of key: value')
