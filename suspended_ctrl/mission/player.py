@@ -40,11 +40,13 @@ class MissionPlayer:
     def __init__(self, mission: TimedMission) -> None:
         self.mission = mission
         self.reference: Reference | None = None
+        self._whole = mission.reference
         self._origin_s = np.nan
         self._held_at_s: float | None = None
         self._sent = 0
 
-    def start(self, now: float, safety_state: str, position_map_m: Array | None) -> Reply:
+    def start(self, now: float, safety_state: str, position_map_m: Array | None,
+              quaternion_wxyz: Array | None) -> Reply:
         """
         Start from the first waypoint, or go on from a hold.
 
@@ -53,7 +55,7 @@ class MissionPlayer:
         now : float
             Host time, s.
         safety_state : str
-        position_map_m : ndarray, shape (3,), or None
+        position_map_m, quaternion_wxyz : ndarray, shape (3,) and (4,), or None
             Of the platform, None when not known.
 
         Returns
@@ -64,11 +66,11 @@ class MissionPlayer:
         """
         if safety_state != 'live':
             return Reply(False, f'the rig is {safety_state}, not live: enable it first')
-        if position_map_m is None:
+        if position_map_m is None or quaternion_wxyz is None:
             return Reply(False, 'no odometry yet: is the state estimator running?')
         if self.running(now) and self._held_at_s is None:
             return Reply(False, 'the mission is under way already')
-        whole = self.mission.reference
+        whole = self._whole
         begin = whole.starting_at(0.0).at(self._held_at_s or 0.0).position_map_m
         gap = float(np.linalg.norm(position_map_m - begin))
         if gap > START_WITHIN_M:
@@ -77,7 +79,8 @@ class MissionPlayer:
                          f'({place}) m: allowed is {START_WITHIN_M} m')
         start_s = now + START_AHEAD_S
         if self._held_at_s is None:
-            self.reference = whole.starting_at(start_s)
+            self._whole = self.mission.approached_from(position_map_m, quaternion_wxyz)
+            self.reference = self._whole.starting_at(start_s)
             self._origin_s, self._sent = start_s, 0
             message = f'{self.mission.mission.file.name} starts in {START_AHEAD_S} s'
         else:
@@ -91,7 +94,7 @@ class MissionPlayer:
         """Slow to a halt on the path; ``start`` goes on from there."""
         if not self.running(now) or self._held_at_s is not None or self.reference is None:
             return Reply(False, 'no mission is under way')
-        whole = self.mission.reference.starting_at(self._origin_s)
+        whole = self._whole.starting_at(self._origin_s)
         self.reference, self._held_at_s = halted(whole, now)
         return Reply(True, f'holding {self._held_at_s:.1f} s into the path')
 
@@ -104,6 +107,7 @@ class MissionPlayer:
 
     def clear(self) -> None:
         """Forget the path under way, as after a stop of the rig."""
+        self._whole = self.mission.reference
         self.reference = None
         self._held_at_s = None
         self._origin_s = np.nan

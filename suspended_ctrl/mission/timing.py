@@ -42,6 +42,8 @@ class TimedMission:
     mission : Mission
     reference : Reference
         From the equilibrium on; its time 0 is the start of the approach.
+    approach : Reference
+        Its first leg, to the mission's start.
     path_start_s, path_end_s : float
         Part of the reference that the mission is judged on.
     payloads : tuple of TimedPayload
@@ -54,11 +56,25 @@ class TimedMission:
 
     mission: Mission
     reference: Reference
+    approach: Reference
     path_start_s: float
     path_end_s: float
     payloads: tuple[TimedPayload, ...]
     waypoints_map_m: Array
     reach: ReachUse
+
+    def approached_from(self, position_map_m: Array, quaternion_wxyz: Array) -> Reference:
+        """Return the reference with its approach starting from another pose, at rest there."""
+        first = len(self.approach.time_s) - 1
+        leg = straight(minimum_jerk(float(self.approach.time_s[-1])), position_map_m,
+                       self.approach.position_map_m[-1], quaternion_wxyz,
+                       self.approach.quaternion_wxyz[-1])
+        rest = self.reference
+        return joined([leg, Reference(
+            0.0, rest.time_s[first:] - rest.time_s[first], rest.position_map_m[first:],
+            rest.velocity_map_m_s[first:], rest.acceleration_map_m_s2[first:],
+            rest.quaternion_wxyz[first:], rest.rate_body_rad_s[first:],
+            rest.rate_dot_body_rad_s2[first:])])
 
 
 class _Builder:
@@ -137,7 +153,7 @@ def timed(mission: Mission) -> TimedMission:
     reach = use_of_reach(rig, reference, builder.loads)
     if reach.share > 1.0 and file.out_of_reach == 'refuse':
         raise InputError(f'{mission.path}: path: {reach.sentence()}')
-    return TimedMission(mission, reference, path_start_s, builder.time_s, tuple(builder.payloads),
+    return TimedMission(mission, reference, builder.parts[0], path_start_s, builder.time_s, tuple(builder.payloads),
                         frozen(np.array(builder.waypoints)), reach)
 
 
