@@ -46,11 +46,12 @@ $(STAMP): setup.py setup.cfg pyproject.toml Makefile
 	    see=--system-site-packages; extras=test; \
 	else \
 	    echo 'setup: no ROS is sourced, ROS 2 comes from wheels'; \
-	    see=; extras=test,ros,ros_test; \
+	    see=; extras=test,ros,ament; \
 	fi; \
 	echo "setup: $$("$(PYTHON)" --version) into $(VENV), a few minutes the first time"; \
 	"$(PYTHON)" -m venv --clear $$see $(VENV); \
-	$(BIN)/python -m pip install --quiet --disable-pip-version-check --no-input \
+	quiet=-qq; if [ -t 1 ]; then quiet=; fi; \
+	$(BIN)/python -m pip install $$quiet --disable-pip-version-check --no-input --no-compile \
 	    --editable ".[$$extras]"
 	@$(RUN) $(BIN)/python -c "$$WARM"
 	@touch $@

@@ -47,8 +47,8 @@ ROS = (
     'ros-jazzy-trajectory-msgs',
 )
 
-# Jazzy's linters as wheels, for the same machines.
-ROS_TEST = (
+# Jazzy's linters as wheels, for the same machines; beside a sourced ROS they are packages of it.
+AMENT = (
     'ros-ament-flake8~=0.17.3',
     'ros-ament-pep257~=0.17.3',
 )
@@ -110,7 +110,7 @@ setup(
     ],
     zip_safe=False,
     install_requires=RUN,
-    extras_require={'ros': ROS, 'ros_test': ROS_TEST, 'test': TEST},
+    extras_require={'ros': ROS, 'ament': AMENT, 'test': TEST},
     entry_points={
         'console_scripts': [
             'suspended-ctrl = suspended_ctrl.cli:main',
