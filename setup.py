@@ -92,8 +92,6 @@ setup(
     name=NAME,
     version='0.1.0',
     description='Control of rotor-driven platforms that hang on an elastic tether',
-    long_description=Path('README.md').read_text(encoding='utf-8'),
-    long_description_content_type='text/markdown',
     author='The suspended_ctrl maintainers',
     author_email='maintainers@suspended-ctrl.example',
     maintainer='The suspended_ctrl maintainers',
