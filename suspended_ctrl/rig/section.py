@@ -25,7 +25,8 @@ def refuse(key: Key | tuple[Key, ...], value: object, allowed: str) -> NoReturn:
         Where the value stands, from the section or list that the validator belongs to; an empty
         tuple for that itself.
     value : object
-        What stands there; text is shown in place of what the file holds.
+        What stands there; the file's own text is shown, but where this is
+        text and the file holds something else, this is.
     allowed : str
         What may stand there.
 

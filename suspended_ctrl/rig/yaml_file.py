@@ -125,9 +125,9 @@ def _problem(tree: Tree, error: dict[str, Any]) -> tuple[KeyPath, str, str]:
     for part in last:
         path = (*path, part)
         value = _child(value, part)
-    if kind == 'refused' and (value is _MISSING or isinstance(context['value'], str)):
-        value = context['value'] if context['value'] is not None else _MISSING
     text = 'missing' if value is _MISSING else value_text(value)
+    if kind == 'refused' and isinstance(context['value'], str) and not isinstance(value, str):
+        text = context['value']
     return path, text, _allowed(error, context, path, value)
 
 

@@ -16,7 +16,7 @@ from suspended_ctrl.rig.section import Key
 Path = tuple[Key, ...]
 
 # Far above any file that a person writes; stops aliases of aliases from filling the memory.
-_VALUES_MAX = 200_000
+_VALUES_MAX = 50_000
 
 
 @dataclass(frozen=True)
