@@ -1,0 +1,13 @@
+"""Who supplies the wrench: rotors and carrier share the work."""
+
+from suspended_ctrl.allocation.allocator import EffortAllocator, EffortSettings
+from suspended_ctrl.allocation.allocators import ALLOCATORS, Allocator
+from suspended_ctrl.allocation.values import (
+    Allocation,
+    AllocationInputs,
+    EffortInputs,
+    EffortOutputs,
+)
+
+__all__ = ['ALLOCATORS', 'Allocation', 'AllocationInputs', 'Allocator', 'EffortAllocator',
+           'EffortInputs', 'EffortOutputs', 'EffortSettings']
