@@ -194,7 +194,7 @@ def test_the_file_that_is_spoilt_is_good(tmp_path: Path) -> None:
 
 def test_a_file_that_holds_itself(tmp_path: Path) -> None:
     _, said = refusal('&all\nbody: *all\n', tmp_path)
-    assert ':2: body: value 'alias': no alias to something that holds it' in said
+    assert ":2: body: value 'alias': no alias to something that holds it" in said
 
 
 def test_first_by_line_and_how_many_more(tmp_path: Path) -> None:
