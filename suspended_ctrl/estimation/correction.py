@@ -1,0 +1,255 @@
+"""
+Measurement update of the 24 errors, with a gate and a monitor of the stamps beside it.
+
+The monitor is the separate-bias estimator of Friedland (IEEE TAC 14(4), 1969): the innovations
+answer linearly to a constant offset of the pose stamps, through a sensitivity that is carried along
+with the state; the filter itself knows nothing of it.
+"""
+
+from numba import types
+import numpy as np
+
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, OUT_VECTOR, VECTOR
+from suspended_ctrl.rig.frozen import Array
+
+
+@kernel(types.void(VECTOR, VECTOR, MATRIX, VECTOR, VECTOR, VECTOR, OUT_MATRIX, OUT_VECTOR))
+def imu_residual(x: Array, s: Array, j: Array, rate: Array, force: Array, arm: Array, h: Array,
+                 nu: Array) -> None:
+    """
+    Write Jacobian and innovation of gyroscope and accelerometer.
+
+    Parameters
+    ----------
+    x, s, j : ndarray
+        State and its linearisation, see ``dynamics``.
+    rate, force : ndarray, shape (3,)
+        Measured, in body axes.
+    arm : ndarray, shape (3,)
+        Sensor from the centre of mass, body axes.
+    h : ndarray, shape (6, 24)
+        Out: derivative of (rate, force) by the errors.
+    nu : ndarray, shape (6,)
+        Out: measured less expected.
+
+    """
+    for i in range(3):
+        for k in range(24):
+            h[i, k] = 0.0
+            h[3 + i, k] = j[i, k]
+        h[i, 9 + i] = 1.0
+        h[i, 12 + i] = 1.0
+        h[3 + i, 15 + i] = 1.0
+        nu[i] = rate[i] - x[10 + i] - x[13 + i]
+        nu[3 + i] = force[i] - s[i] - x[16 + i]
+    if arm[0] == 0.0 and arm[1] == 0.0 and arm[2] == 0.0:
+        return
+    a, b, d = arm[0], arm[1], arm[2]
+    u, v, w = x[10], x[11], x[12]
+    # Turning of the arm: (alpha x arm) + rate x (rate x arm).
+    along = u * a + v * b + w * d
+    square = u * u + v * v + w * w
+    nu[3] -= s[4] * d - s[5] * b + u * along - a * square
+    nu[4] -= s[5] * a - s[3] * d + v * along - b * square
+    nu[5] -= s[3] * b - s[4] * a + w * along - d * square
+    for k in range(24):
+        h[3, k] += j[4, k] * d - j[5, k] * b
+        h[4, k] += j[5, k] * a - j[3, k] * d
+        h[5, k] += j[3, k] * b - j[4, k] * a
+    for i in range(3):
+        for k in range(3):
+            h[3 + i, 9 + k] += x[10 + i] * arm[k] - 2.0 * arm[i] * x[10 + k]
+        h[3 + i, 9 + i] += along
+
+
+@kernel(types.void(VECTOR, VECTOR, VECTOR, VECTOR, OUT_MATRIX, OUT_VECTOR, OUT_VECTOR))
+def pose_residual(x: Array, position: Array, quaternion: Array, arm: Array, h: Array, nu: Array,
+                  drift: Array) -> None:
+    """
+    Write Jacobian and innovation of a pose, and how the innovation answers to its stamp.
+
+    Parameters
+    ----------
+    x : ndarray, shape (25,)
+    position : ndarray, shape (3,)
+        Of the marker body, map.
+    quaternion : ndarray, shape (4,)
+        Attitude of the platform (not of the marker body) as measured.
+    arm : ndarray, shape (3,)
+        Marker body from the centre of mass, body axes.
+    h : ndarray, shape (6, 24)
+        Out: derivative of (position in map, attitude in body) by the errors.
+    nu : ndarray, shape (6,)
+        Out: measured less expected.
+    drift : ndarray, shape (6,)
+        Out: minus the velocity of the marker body and minus the rate; a pose stamped too late by
+        d shows ``drift * d``.
+
+    """
+    w, a, b, d = x[6], x[7], x[8], x[9]
+    r = np.empty((3, 3))
+    r[0, 0] = 1.0 - 2.0 * (b * b + d * d)
+    r[0, 1] = 2.0 * (a * b - w * d)
+    r[0, 2] = 2.0 * (a * d + w * b)
+    r[1, 0] = 2.0 * (a * b + w * d)
+    r[1, 1] = 1.0 - 2.0 * (a * a + d * d)
+    r[1, 2] = 2.0 * (b * d - w * a)
+    r[2, 0] = 2.0 * (a * d - w * b)
+    r[2, 1] = 2.0 * (b * d + w * a)
+    r[2, 2] = 1.0 - 2.0 * (a * a + b * b)
+    for i in range(6):
+        for k in range(24):
+            h[i, k] = 0.0
+    swing = np.empty(3)
+    swing[0] = x[11] * arm[2] - x[12] * arm[1]
+    swing[1] = x[12] * arm[0] - x[10] * arm[2]
+    swing[2] = x[10] * arm[1] - x[11] * arm[0]
+    for i in range(3):
+        h[i, i] = 1.0
+        h[3 + i, 3 + i] = 1.0
+        h[i, 3] = r[i, 2] * arm[1] - r[i, 1] * arm[2]
+        h[i, 4] = r[i, 0] * arm[2] - r[i, 2] * arm[0]
+        h[i, 5] = r[i, 1] * arm[0] - r[i, 0] * arm[1]
+        nu[i] = position[i] - x[i]
+        drift[i] = -x[3 + i]
+        for k in range(3):
+            nu[i] -= r[i, k] * arm[k]
+            drift[i] -= r[i, k] * swing[k]
+        drift[3 + i] = -x[10 + i]
+    # Rotation vector of conj(q) times the measurement, Solà eq. 103.
+    q0, q1, q2, q3 = quaternion[0], quaternion[1], quaternion[2], quaternion[3]
+    e0 = w * q0 + a * q1 + b * q2 + d * q3
+    e1 = w * q1 - a * q0 - b * q3 + d * q2
+    e2 = w * q2 + a * q3 - b * q0 - d * q1
+    e3 = w * q3 - a * q2 + b * q1 - d * q0
+    sine = np.sqrt(e1 * e1 + e2 * e2 + e3 * e3)
+    scale = 2.0
+    if sine > 1e-9:
+        scale = 2.0 * np.arctan2(sine, abs(e0)) / sine
+    if e0 < 0.0:
+        scale = -scale
+    nu[3] = scale * e1
+    nu[4] = scale * e2
+    nu[5] = scale * e3
+
+
+@kernel(types.void(OUT_MATRIX, MATRIX, VECTOR, VECTOR, VECTOR, VECTOR, OUT_VECTOR, OUT_MATRIX,
+                   OUT_VECTOR))
+def correct(p: Array, h: Array, nu: Array, noise: Array, drift: Array, options: Array, lag: Array,
+            gain: Array, out: Array) -> None:
+    """
+    Gate a measurement and absorb it.
+
+    Parameters
+    ----------
+    p : ndarray, shape (24, 24)
+        Covariance, changed in place if absorbed; stays symmetric to the last bit.
+    h : ndarray, shape (m, 24)
+    nu : ndarray, shape (m,)
+        Innovation.
+    noise : ndarray, shape (m,)
+        Variances of the measurement.
+    drift : ndarray, shape (m,)
+        Direct answer of the innovation to an offset of the stamp; zeros where there is none.
+    options : ndarray, shape (4,)
+        Gate on the squared distance (inf: none); the monitor's offset (s) and its variance (s^2);
+        whether this measurement teaches the monitor (above zero).
+    lag : ndarray, shape (24,)
+        Shift of the state for each second of offset of the stamps, changed if absorbed.
+    gain : ndarray, shape (24, m)
+        Out: the gain.
+    out : ndarray, shape (29,)
+        Out: correction of the errors 0:24, squared distance of the innovation 24, of the innovation
+        with the offset's part taken out 25, absorbed (1 or 0) 26, the monitor's offset 27 and
+        variance 28.
+
+    """
+    m = h.shape[0]
+    # g = p h', as rows.
+    g = np.zeros((m, 24))
+    for k in range(m):
+        for i in range(24):
+            a = h[k, i]
+            if a != 0.0:
+                for n in range(24):
+                    g[k, n] += a * p[i, n]
+    low = np.zeros((m, m))
+    y = np.empty(m)
+    z = np.empty(m)
+    for k in range(m):
+        total = drift[k]
+        for i in range(24):
+            total -= h[k, i] * lag[i]
+        z[k] = total
+        for i in range(k + 1):
+            total = noise[k] if i == k else 0.0
+            for n in range(24):
+                total += h[i, n] * g[k, n]
+            for n in range(i):
+                total -= low[k, n] * low[i, n]
+            if i == k:
+                low[k, k] = np.sqrt(total)
+            else:
+                low[k, i] = total / low[i, i]
+    # y, z: innovation and sensitivity in units of the innovation's own spread; g likewise.
+    distance = 0.0
+    yz = 0.0
+    zz = 0.0
+    offset = options[1]
+    variance = options[2]
+    for k in range(m):
+        total = nu[k]
+        answer = z[k]
+        for i in range(k):
+            total -= low[k, i] * y[i]
+            answer -= low[k, i] * z[i]
+        y[k] = total / low[k, k]
+        z[k] = answer / low[k, k]
+        distance += y[k] * y[k]
+        zz += z[k] * z[k]
+        yz += y[k] * z[k]
+    # The same distance with the offset taken out and its uncertainty put in.
+    left = yz - offset * zz
+    inside = distance - 2.0 * offset * yz + offset * offset * zz
+    if variance > 0.0:
+        inside -= left * left / (1.0 / variance + zz)
+    out[24] = distance
+    out[25] = inside
+    out[26] = 0.0
+    out[27] = offset
+    out[28] = variance
+    if not inside <= options[0]:
+        return
+    out[26] = 1.0
+    if options[3] > 0.0 and variance > 0.0:
+        variance = 1.0 / (1.0 / variance + zz)
+        out[27] = offset + variance * left
+        out[28] = variance
+    for k in range(m):
+        for i in range(k):
+            a = low[k, i]
+            for n in range(24):
+                g[k, n] -= a * g[i, n]
+        a = 1.0 / low[k, k]
+        for n in range(24):
+            g[k, n] *= a
+    for n in range(24):
+        total = 0.0
+        shift = 0.0
+        for k in range(m):
+            total += g[k, n] * y[k]
+            shift += g[k, n] * z[k]
+        out[n] = total
+        lag[n] += shift
+    for k in range(m):
+        for i in range(24):
+            a = g[k, i]
+            for n in range(24):
+                p[i, n] -= a * g[k, n]
+    # gain = g' low^-1, backwards.
+    for k in range(m - 1, -1, -1):
+        for n in range(24):
+            total = g[k, n]
+            for i in range(k + 1, m):
+                total -= low[i, k] * gain[n, i]
+            gain[n, k] = total / low[k, k]

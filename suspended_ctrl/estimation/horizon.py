@@ -1,0 +1,162 @@
+"""
+The filter at a delayed horizon, and the samples around it.
+
+Samples up to the horizon are absorbed in the order of their stamps; later ones wait. One that comes
+too late for that makes the filter go back to a snapshot and come again.
+"""
+
+from collections.abc import Callable
+
+import numpy as np
+
+from suspended_ctrl.estimation.body import BodyModel
+from suspended_ctrl.estimation.filter import ErrorStateFilter, Snapshot
+from suspended_ctrl.estimation.settings import EstimatorSettings
+from suspended_ctrl.estimation.timeline import (
+    CARRIER,
+    Entry,
+    IMU,
+    Key,
+    PAYLOAD,
+    POSE,
+    ROTORS,
+    TETHER,
+    Timeline,
+)
+from suspended_ctrl.physics.values import PayloadEvent
+
+SNAPSHOT_EVERY_S = 0.02
+
+
+class Horizon:
+    """
+    A filter with a memory.
+
+    Parameters
+    ----------
+    settings : EstimatorSettings
+    body : BodyModel
+    loaded : callable
+        Body that carries a payload event's load.
+    verdict : callable
+        Told stamp and fate of every pose.
+
+    """
+
+    def __init__(self, settings: EstimatorSettings, body: BodyModel,
+                 loaded: Callable[[PayloadEvent], BodyModel],
+                 verdict: Callable[[float, bool], None]) -> None:
+        self._settings = settings
+        self._loaded = loaded
+        self._verdict = verdict
+        self.filter = ErrorStateFilter(settings, body)
+        self.line = Timeline()
+        self._coaster = ErrorStateFilter(settings, body)
+        self._snapshots: list[Snapshot] = []
+        self._last: Key = (-np.inf, POSE)
+
+    @property
+    def oldest_s(self) -> float:
+        """Samples with stamps up to here come too late."""
+        return self._snapshots[0].t if self._snapshots else -np.inf
+
+    def begin(self) -> None:
+        """Start from the filter as it stands; samples at and before its stamp are gone."""
+        self._last = (self.filter.t, POSE)
+        self.line.rewind(self._last)
+        self.line.forget(np.inf)
+        self._snapshots = [self.filter.snapshot(self._last)]
+
+    def note(self, key: Key, entry: Entry) -> bool:
+        """Take a sample, going back if it belongs before the horizon; false for a duplicate."""
+        if not self.line.add(key, entry):
+            return False
+        if self._snapshots and key <= self._last:
+            while len(self._snapshots) > 1 and self._snapshots[-1].key >= key:
+                self._snapshots.pop()
+            snapshot = self._snapshots[-1]
+            self.filter.restore(snapshot)
+            self.line.rewind(snapshot.key)
+            self._last = snapshot.key
+        return True
+
+    def absorb(self, limit_s: float) -> None:
+        """Absorb waiting samples with stamps up to ``limit_s``."""
+        line, state = self.line, self.filter
+        limit = (limit_s, POSE)
+        while line.taken < len(line.keys) and line.keys[line.taken] <= limit:
+            key = line.keys[line.taken]
+            entry = line.entries[line.taken]
+            line.taken += 1
+            state.advance(key[0])
+            self._last = key
+            if key[1] == POSE:
+                self._verdict(key[0], state.pose(*entry))
+                if key[0] - self._snapshots[-1].t >= SNAPSHOT_EVERY_S:
+                    self._keep()
+            elif key[1] == IMU:
+                state.imu(*entry)
+            else:
+                self._drive(state, key, entry)
+        if state.t - self._snapshots[-1].t >= 2.0 * SNAPSHOT_EVERY_S:
+            self._keep()
+
+    def at(self, t: float) -> ErrorStateFilter | None:
+        """
+        Filter as it stands or would stand at ``t``.
+
+        Parameters
+        ----------
+        t : float
+            Before the horizon: from a snapshot; after it: over the samples that wait, corrected
+            with the last gain, then by the model alone.
+
+        Returns
+        -------
+        ErrorStateFilter or None
+            To be read before the next call; None before the oldest snapshot.
+
+        """
+        if t == self.filter.t:
+            return self.filter
+        other = self._coaster
+        if t > self.filter.t:
+            other.copy_from(self.filter)
+            first = self.line.taken
+        else:
+            known = [s for s in self._snapshots if s.t <= t]
+            if not known:
+                return None
+            other.copy_from(self.filter)
+            other.restore(known[-1])
+            first = self.line.after(known[-1].key)
+        waiting = self.line.between(first, t)
+        covariance = other.foresee(t, sum(key[1] == IMU for key, _ in waiting))
+        for key, entry in waiting:
+            other.coast(key[0])
+            if key[1] == IMU:
+                other.imu_while_coasting(*entry)
+            elif key[1] != POSE:
+                self._drive(other, key, entry)
+        other.coast(t)
+        other.p[:] = covariance
+        return other
+
+    def _drive(self, state: ErrorStateFilter, key: Key, entry: Entry) -> None:
+        t, kind = key
+        if kind == ROTORS:
+            state.rotors(t, entry)
+        elif kind == CARRIER:
+            state.anchor(t, entry)
+        elif kind == TETHER:
+            state.tension(entry)
+        elif kind == PAYLOAD:
+            state.set_body(self._loaded(entry))
+
+    def _keep(self) -> None:
+        snapshots = self._snapshots
+        snapshots.append(self.filter.snapshot(self._last))
+        oldest = self.filter.t - self._settings.history_s
+        if snapshots[0].t < oldest - 0.1:
+            self._snapshots = [s for s in snapshots if s.t >= oldest]
+            self.line.forget(self._snapshots[0].t)
