@@ -36,9 +36,9 @@ from suspended_ctrl.review.messages.values import (
 from suspended_ctrl.rig.frozen import Array, frozen
 
 # Single-precision drivers are off by 1e-7; past this the four numbers are no rotation.
-_UNIT_TOLERANCE = 1e-3
+UNIT_TOLERANCE = 1e-3
 # Inside this a quaternion is left bit for bit as it came.
-_UNIT_EXACT = 1e-9
+UNIT_EXACT = 1e-9
 _ZERO = frozen([0.0, 0.0, 0.0])
 _NO_PAYLOAD = Payload()
 
@@ -70,10 +70,10 @@ def read_quaternion(quaternion: Any) -> Array:
     """Unit quaternion (w, x, y, z), normalised where single precision left it slightly off."""
     w, x, y, z = quaternion.w, quaternion.x, quaternion.y, quaternion.z
     square = w * w + x * x + y * y + z * z
-    if not abs(square - 1.0) < 2.0 * _UNIT_TOLERANCE:
+    if not abs(square - 1.0) < 2.0 * UNIT_TOLERANCE:
         raise MessageError(f'quaternion x {x:g} y {y:g} z {z:g} w {w:g} is not of unit length')
     out = np.array((w, x, y, z))
-    if abs(square - 1.0) > _UNIT_EXACT:
+    if abs(square - 1.0) > UNIT_EXACT:
         out /= np.sqrt(square)
     out.setflags(write=False)
     return out

@@ -20,14 +20,14 @@ from suspended_ctrl.review.messages.read import (
     read_numbers,
     read_stamp,
     read_time,
+    UNIT_EXACT,
+    UNIT_TOLERANCE,
 )
 from suspended_ctrl.review.messages.values import MessageError, MessageTypes
 from suspended_ctrl.rig.frozen import Array, frozen
 
 # Times travel in whole nanoseconds: a spacing may come out that much longer.
 _ROUNDING_S = 2e-9
-_UNIT_TOLERANCE = 1e-3
-_UNIT_EXACT = 1e-9
 
 
 def _duration(types: MessageTypes, seconds: float) -> Any:
@@ -117,9 +117,9 @@ def read_reference(message: Any) -> Reference | None:
     quaternion = rows[:, 4:8]
     norm = np.sqrt((quaternion * quaternion).sum(axis=1))
     worst = int(np.argmax(np.abs(norm - 1.0)))
-    if abs(norm[worst] - 1.0) > _UNIT_TOLERANCE:
+    if abs(norm[worst] - 1.0) > UNIT_TOLERANCE:
         raise MessageError(f'quaternion of point {worst} is not of unit length: {norm[worst]:g}')
-    off = np.abs(norm - 1.0) > _UNIT_EXACT
+    off = np.abs(norm - 1.0) > UNIT_EXACT
     quaternion[off] /= norm[off, None]
     return Reference(
         read_stamp(message), frozen(time_s), frozen(rows[:, 1:4]), frozen(rows[:, 8:11]),
