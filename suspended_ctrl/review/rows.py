@@ -27,7 +27,8 @@ def rotation_vectors(start: Array, end: Array) -> Array:
     sine = np.linalg.norm(vector, axis=1)
     # Near zero angle/sine is 2 to double precision.
     scale = np.where(sine > 1e-8, 2.0 * np.arctan2(sine, np.abs(w)) / np.maximum(sine, 1e-8), 2.0)
-    return np.where(w < 0.0, -1.0, 1.0)[:, None] * scale[:, None] * vector
+    out: Array = (np.where(w < 0.0, -1.0, 1.0) * scale)[:, None] * vector
+    return out
 
 
 def interpolated(t: Array, times: Array, values: Array) -> Array:
