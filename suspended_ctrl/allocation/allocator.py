@@ -4,8 +4,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from suspended_ctrl.allocation.allocators import ALLOCATORS, Allocator
+from suspended_ctrl.allocation.allocators import ALLOCATORS, Allocator, PlanningAllocator
 from suspended_ctrl.allocation.carrier_observer import CarrierObserver
+from suspended_ctrl.allocation.carrier_plan import PlanRequest
 from suspended_ctrl.allocation.lag_inversion import led_command, reachable_speed
 from suspended_ctrl.allocation.pseudo_inverse import PseudoInverse
 from suspended_ctrl.allocation.rotor_observer import RotorObserver
@@ -24,6 +25,7 @@ from suspended_ctrl.physics.rotor import RotorModel
 from suspended_ctrl.physics.tether import tether_wrench
 from suspended_ctrl.physics.values import (
     CarrierCommand,
+    CarrierPlan,
     CarrierSample,
     Estimate,
     RotorCommand,
@@ -134,6 +136,35 @@ class EffortAllocator:
                        'rotors_out': float((~seen.healthy).sum()), **allocation.diagnostics}
         return EffortOutputs(RotorCommand(stamp, command), carrier, allocation.plan, achieved,
                              diagnostics)
+
+    def plan_request(self, t: float) -> PlanRequest | None:
+        """
+        What the carrier's plan is to be made from, after the step at ``t``.
+
+        Parameters
+        ----------
+        t : float
+            Time of the step just made, s.
+
+        Returns
+        -------
+        PlanRequest or None
+            None unless a period is over, the rotors turn and the strategy plans.
+
+        """
+        if self._state not in TURNING or not isinstance(self._strategy, PlanningAllocator):
+            return None
+        return self._strategy.plan_request(t)
+
+    def solve_plan(self, request: PlanRequest) -> CarrierPlan:
+        """Solve a request in this process; it may take milliseconds and belongs outside the tick."""
+        assert isinstance(self._strategy, PlanningAllocator)
+        return self._strategy.solve_plan(request)
+
+    def take_plan(self, plan: CarrierPlan) -> None:
+        """Bring the answer to a request, from here or from another process."""
+        if isinstance(self._strategy, PlanningAllocator):
+            self._strategy.take_plan(plan)
 
     # ------------------------------------------------------------ what is known
 

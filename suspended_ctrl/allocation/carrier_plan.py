@@ -1,0 +1,158 @@
+"""Plans of the carrier: what is asked for, the planner that answers, and how a plan is followed."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from suspended_ctrl.allocation.carrier_trail import SHARE
+from suspended_ctrl.allocation.horizon_problem import (
+    BLOCKS_S,
+    HorizonMaps,
+    build_horizon_problem,
+    horizon_maps,
+)
+from suspended_ctrl.physics.values import CarrierPlan
+from suspended_ctrl.qp import CompiledQp
+from suspended_ctrl.rig.frozen import Array, frozen
+from suspended_ctrl.rig.rig import Rig
+
+PERIOD_S = 0.1
+HORIZON_S = frozen(np.cumsum(BLOCKS_S))
+# Room left at the ends of travel for what the solver and the readings round.
+_TRAVEL_ROOM_M = 1e-3
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class PlanRequest:
+    """
+    Everything a plan depends on, to be solved here or in another process.
+
+    Attributes
+    ----------
+    effect_s : float
+        When the plan takes effect: one period after the state it starts from.
+    axis_m, setpoint_m, setpoint_speed_m_s : ndarray, shape (k,)
+        Expected then.
+    wanted_m : ndarray, shape (h, k)
+        Readings from which the tether alone gives what the reference needs, ``HORIZON_S`` after.
+
+    """
+
+    effect_s: float
+    axis_m: Array
+    setpoint_m: Array
+    setpoint_speed_m_s: Array
+    wanted_m: Array
+
+
+@dataclass(frozen=True, eq=False, slots=True)
+class SetpointPlan(CarrierPlan):
+    """
+    A plan with the setpoints that lead to it; ``stamp_s`` is when it takes effect.
+
+    Attributes
+    ----------
+    setpoint_m, setpoint_speed_m_s : ndarray, shape (h + 1, k)
+        At ``time_s``, the start included; acceleration is constant between.
+    failure : str or None
+        Why the plan is only a way to rest; None when planned.
+
+    """
+
+    setpoint_m: Array
+    setpoint_speed_m_s: Array
+    failure: str | None = None
+
+    def setpoint_at(self, t: float) -> tuple[Array, Array]:
+        """Setpoint and its speed at host time ``t``, shapes (k,); at rest beyond the end."""
+        ahead = t - self.stamp_s
+        time = self.time_s
+        if ahead >= time[-1]:
+            return self.setpoint_m[-1], np.zeros(self.setpoint_m.shape[1])
+        k = max(int(np.searchsorted(time, ahead, side='right')) - 1, 0)
+        since = max(ahead - time[k], 0.0)
+        speed = self.setpoint_speed_m_s[k]
+        acceleration = (self.setpoint_speed_m_s[k + 1] - speed) / (time[k + 1] - time[k])
+        return (self.setpoint_m[k] + since * speed + 0.5 * since * since * acceleration,
+                speed + since * acceleration)
+
+
+class CarrierPlanner:
+    """
+    Solves plan requests for one rig; holds nothing else but the last active sets.
+
+    Parameters
+    ----------
+    rig : Rig
+
+    """
+
+    def __init__(self, rig: Rig) -> None:
+        self._carrier = rig.carrier
+        self._maps: dict[float, HorizonMaps] = {}
+        self._problems: list[CompiledQp] = []
+        for time_constant in rig.carrier.time_constant_s.tolist():
+            if time_constant not in self._maps:
+                self._maps[time_constant] = horizon_maps(time_constant)
+            self._problems.append(CompiledQp(build_horizon_problem(self._maps[time_constant])))
+
+    def solve(self, request: PlanRequest) -> SetpointPlan:
+        """
+        Plan all axes.
+
+        Parameters
+        ----------
+        request : PlanRequest
+
+        Returns
+        -------
+        SetpointPlan
+            Where a problem has no solution, its axis comes to rest as fast as it may, and
+            ``failure`` says so.
+
+        """
+        columns, failure = [], None
+        for axis in range(len(self._carrier.axes)):
+            column, fault = self._planned(request, axis)
+            columns.append(column)
+            failure = failure or fault
+        stacked = np.stack(columns, axis=-1)
+        time = np.concatenate(([0.0], HORIZON_S))
+        return SetpointPlan(request.effect_s, frozen(time), frozen(stacked[0]), frozen(stacked[1]),
+                            frozen(stacked[2]), frozen(stacked[3]), failure)
+
+    def _planned(self, request: PlanRequest, axis: int) -> tuple[Array, str | None]:
+        """Axis, its speed, setpoint, its speed at the start and the block ends, shape (4, h + 1)."""
+        carrier = self._carrier
+        time_constant = float(carrier.time_constant_s[axis])
+        maps = self._maps[time_constant]
+        most = SHARE * carrier.acceleration_max_m_s2[axis]
+        start = np.array([request.axis_m[axis], request.setpoint_m[axis],
+                          request.setpoint_speed_m_s[axis]])
+        solution = self._problems[axis].solve({
+            'wanted': request.wanted_m[:, axis], 'start': start,
+            'travel': [carrier.min_m[axis] + _TRAVEL_ROOM_M, carrier.max_m[axis] - _TRAVEL_ROOM_M],
+            'speed': SHARE * carrier.speed_max_m_s[axis], 'acceleration_most': most})
+        if solution.optimal:
+            acceleration, failure = solution['acceleration'], None
+        else:
+            acceleration = _braking(start[2], most)
+            failure = f'{carrier.axes[axis]}: {solution.status.value}'
+        position = maps.axis_from_start @ start + maps.axis_from_acceleration @ acceleration
+        setpoint = (maps.setpoint_from_start @ start
+                    + maps.setpoint_from_acceleration @ acceleration)
+        speed = maps.speed_from_start @ start + maps.speed_from_acceleration @ acceleration
+        position = np.concatenate((start[:1], position))
+        setpoint = np.concatenate((start[1:2], setpoint))
+        velocity = (setpoint - position) / time_constant
+        return (np.stack((position, velocity, setpoint, np.concatenate((start[2:], speed)))),
+                failure)
+
+
+def _braking(speed: float, most: float) -> Array:
+    """Accelerations of the blocks that bring a speed to rest, shape (h,)."""
+    out = np.zeros(len(BLOCKS_S))
+    for k, span in enumerate(BLOCKS_S):
+        out[k] = np.clip(-speed / span, -most, most)
+        speed += out[k] * span
+    return out
