@@ -106,10 +106,26 @@ def curve_thrust(speed: float, curve_square: Array, thrust: Array) -> float:
 def turn_rotors(rotor: Array, rotor_fixed: Array, curve_square: Array, thrusts: Array,
                 rate_body: Array, step: float, switch: float) -> Array:
     """
-    Turn the rotors for one step; the mean force and torque of all at the origin, body axes.
+    Turn the rotors for one step.
 
-    Speed follows the drive's target by a first-order lag, exactly; the target becomes NEXT
-    ``switch`` seconds into the step, not at all if that is beyond the step.
+    Speed follows the drive's target by a first-order lag, exactly.
+
+    Parameters
+    ----------
+    rotor : ndarray, shape (ROTOR_ROWS, n)
+        Written: where the step ends.
+    rotor_fixed, curve_square, thrusts : ndarray
+        As for ``apply_forces``.
+    rate_body : ndarray, shape (3,)
+    step : float
+    switch : float
+        When the target becomes NEXT; not in this step if beyond it.
+
+    Returns
+    -------
+    ndarray, shape (6,)
+        Mean force and torque of all rotors on the body, at the origin, ``base_link`` axes.
+
     """
     wrench = np.zeros(6)
     momentum = np.zeros(3)
@@ -148,12 +164,25 @@ def turn_rotors(rotor: Array, rotor_fixed: Array, curve_square: Array, thrusts: 
     return wrench
 
 
-@kernel(OUT_VECTOR(VECTOR, VECTOR, VECTOR, VECTOR))
-def tether_pull(qpos: Array, qvel: Array, fixed: Array, world: Array) -> Array:
+@kernel(OUT_VECTOR(VECTOR, VECTOR, VECTOR, VECTOR, VECTOR))
+def tether_pull(qpos: Array, qvel: Array, anchor: Array, anchor_velocity: Array,
+                fixed: Array) -> Array:
     """
-    Direction from hook to anchor in map, tension, and what damping adds to the spring, shape (5,).
+    How the tether pulls the hook.
 
-    The direction is a unit vector where there is tension.
+    Parameters
+    ----------
+    qpos, qvel, fixed : ndarray
+        As for ``apply_forces``.
+    anchor, anchor_velocity : ndarray, shape (3,)
+        In map.
+
+    Returns
+    -------
+    ndarray, shape (5,)
+        Direction from hook to anchor in map, a unit vector where there is tension; tension; what
+        of it damping adds to the spring.
+
     """
     out = np.zeros(5)
     hook = fixed[HOOK:HOOK + 3]
@@ -161,7 +190,7 @@ def tether_pull(qpos: Array, qvel: Array, fixed: Array, world: Array) -> Array:
     swept = rotate(qpos[3:7], cross(qvel[3:6], hook))
     length = 0.0
     for i in range(3):
-        out[i] = world[ANCHOR + i] - qpos[i] - arm[i]
+        out[i] = anchor[i] - qpos[i] - arm[i]
         length += out[i] * out[i]
     length = np.sqrt(length)
     stretch = length - fixed[REST_LENGTH]
@@ -170,7 +199,7 @@ def tether_pull(qpos: Array, qvel: Array, fixed: Array, world: Array) -> Array:
     rate = 0.0
     for i in range(3):
         out[i] /= length
-        rate += out[i] * (world[ANCHOR_VELOCITY + i] - qvel[i] - swept[i])
+        rate += out[i] * (anchor_velocity[i] - qvel[i] - swept[i])
     spring = fixed[STIFFNESS] * stretch
     out[3] = max(spring + fixed[DAMPING] * rate, 0.0)
     out[4] = out[3] - spring
@@ -185,6 +214,9 @@ def apply_forces(qpos: Array, qvel: Array, force: Array, anchor: Array, rotor: A
                  switch: float) -> None:
     """
     Move the drives through the coming step and set the forces that act during it.
+
+    They are those halfway through the step, to which place and velocity are led by the velocity
+    and by the last step's change of velocity.
 
     Parameters
     ----------
@@ -203,37 +235,45 @@ def apply_forces(qpos: Array, qvel: Array, force: Array, anchor: Array, rotor: A
 
     """
     step = fixed[STEP]
-    quaternion = qpos[3:7]
-    rate = qvel[3:6]
-    pull = tether_pull(qpos, qvel, fixed, world)
+    velocity = 1.5 * qvel - 0.5 * before[:6]
+    place = np.empty(7)
+    for j in range(3):
+        place[j] = qpos[j] + 0.5 * step * qvel[j]
+    halfway = multiply(qpos[3:7], exponential(0.5 * step * qvel[3:6]))
+    place[3:7] = halfway
     before[:6] = qvel
-    before[6:10] = quaternion
+    before[6:10] = qpos[3:7]
+
     departed = np.copy(carrier[POSITION])
     move_carrier(carrier, carrier_fixed, step)
+    middle_anchor = np.empty(3)
+    anchor_velocity = np.zeros(3)
     for j in range(3):
-        at, middle, velocity = fixed[ANCHOR_ZERO + j], fixed[ANCHOR_ZERO + j], 0.0
+        at, middle, final = fixed[ANCHOR_ZERO + j], fixed[ANCHOR_ZERO + j], 0.0
         for i in range(carrier.shape[1]):
-            at += carrier_fixed[i, j] * carrier[POSITION, i]
-            middle += 0.5 * carrier_fixed[i, j] * (departed[i] + carrier[POSITION, i])
-            velocity += carrier_fixed[i, j] * carrier[VELOCITY, i]
+            along = carrier_fixed[i, j]
+            at += along * carrier[POSITION, i]
+            middle += 0.5 * along * (departed[i] + carrier[POSITION, i])
+            anchor_velocity[j] += along * (carrier[POSITION, i] - departed[i]) / step
+            final += along * carrier[VELOCITY, i]
         world[ANCHOR + j] = at
-        world[ANCHOR_VELOCITY + j] = velocity
+        world[ANCHOR_VELOCITY + j] = final
+        middle_anchor[j] = middle
         anchor[0, j] = middle
-    wrench = turn_rotors(rotor, rotor_fixed, curve_square, thrusts, rate, step, switch)
+    wrench = turn_rotors(rotor, rotor_fixed, curve_square, thrusts, velocity[3:6], step, switch)
 
     # Drag in body axes, at the origin.
-    through_air = rotate_back(quaternion, qvel[:3] - world[WIND:WIND + 3])
+    through_air = rotate_back(halfway, velocity[:3] - world[WIND:WIND + 3])
     airspeed = np.sqrt(through_air[0] ** 2 + through_air[1] ** 2 + through_air[2] ** 2)
     for j in range(3):
-        wrench[j] -= (0.5 * fixed[AIR_DENSITY] * fixed[DRAG_AREA + j] * airspeed * through_air[j])
+        wrench[j] -= 0.5 * fixed[AIR_DENSITY] * fixed[DRAG_AREA + j] * airspeed * through_air[j]
 
-    # The attitude halfway: what is fixed in the body turns with it during the step.
-    halfway = multiply(quaternion, exponential(0.5 * step * rate))
-    force_map = rotate(halfway, wrench[:3])
-    push = world[PUSH:PUSH + 3]
+    pull = tether_pull(place, velocity, middle_anchor, anchor_velocity, fixed)
     damping = pull[4] * pull[:3]
-    push_torque = cross(fixed[CENTRE:CENTRE + 3], rotate_back(quaternion, push))
-    damping_torque = cross(fixed[HOOK:HOOK + 3], rotate_back(quaternion, damping))
+    push = world[PUSH:PUSH + 3]
+    force_map = rotate(halfway, wrench[:3])
+    push_torque = cross(fixed[CENTRE:CENTRE + 3], rotate_back(halfway, push))
+    damping_torque = cross(fixed[HOOK:HOOK + 3], rotate_back(halfway, damping))
     for j in range(3):
         force[j] = force_map[j] + push[j] + damping[j]
         force[3 + j] = wrench[3 + j] + push_torque[j] + damping_torque[j]

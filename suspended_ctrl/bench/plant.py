@@ -155,7 +155,10 @@ class Plant:
 
     def tension(self) -> float:
         """Tension in the tether now, N."""
-        return float(k.tether_pull(self.qpos, self.qvel, self.fixed, self.world)[3])
+        world = self.world
+        return float(k.tether_pull(
+            self.qpos, self.qvel, world[k.ANCHOR:k.ANCHOR + 3],
+            world[k.ANCHOR_VELOCITY:k.ANCHOR_VELOCITY + 3], self.fixed)[3])
 
     def truth(self) -> Truth:
         """Everything about the state, copied."""

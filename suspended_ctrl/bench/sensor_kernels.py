@@ -36,8 +36,23 @@ def imu_reading(qpos: Array, qvel: Array, before: Array, place: Array, turn: Arr
     Rate now and mean specific force over the last step, in sensor axes, shape (6,).
 
     The force is the change of the sensor's own velocity, lever arm included, less gravity, seen
-    from the attitude halfway through the step. ``before`` is ``qvel``, then the quaternion, as
-    the step began.
+    from the attitude halfway through the step.
+
+    Parameters
+    ----------
+    qpos, qvel : ndarray, shapes (7,), (6,)
+        As the step ends.
+    before : ndarray, shape (10,)
+        ``qvel``, then the quaternion, as it began.
+    place, turn : ndarray, shapes (3,), (4,)
+        Of the sensor in ``base_link``.
+    step : float
+    bias, noise : ndarray, shape (6,)
+
+    Returns
+    -------
+    ndarray, shape (6,)
+
     """
     departed = before[6:10]
     now = qpos[3:7]
