@@ -127,19 +127,29 @@ class Lead:
         self.transport_s = transport_s
         self.lag_s = rotor_lag_left_s(rig, lag_gain)
         self.lead_s = transport_s + self.lag_s
-        self._felt = np.zeros(0)
-        self._wrenches = np.zeros((0, 6))
+        # Oldest first; unused places hold the first wrench, felt since ever.
+        self._felt = np.full(_HISTORY, -np.inf)
+        self._wrenches = np.zeros((_HISTORY, 6))
+        self._empty = True
 
     def clear(self) -> None:
         """Forget the wrenches on their way."""
-        self._felt = np.zeros(0)
-        self._wrenches = np.zeros((0, 6))
+        self._felt[:] = -np.inf
+        self._empty = True
 
     def record(self, t: float, achieved: Wrench) -> None:
         """Note the wrench that the commands of the step at ``t`` are expected to give."""
-        keep = self._felt > t - 0.2
-        self._felt = np.append(self._felt[keep], t + self.lead_s)[-_HISTORY:]
-        self._wrenches = np.vstack((self._wrenches[keep], achieved.vector()))[-_HISTORY:]
+        felt, wrenches = self._felt, self._wrenches
+        if self._empty:
+            wrenches[:, :3] = achieved.force_body_n
+            wrenches[:, 3:] = achieved.torque_body_nm
+            self._empty = False
+        else:
+            wrenches[:-1] = wrenches[1:]
+            felt[:-1] = felt[1:]
+            wrenches[-1, :3] = achieved.force_body_n
+            wrenches[-1, 3:] = achieved.torque_body_nm
+        felt[-1] = t + self.lead_s
 
     def predict(self, estimate: Estimate, t: float, body: LoadedBody) -> PlatformState:
         """
@@ -159,7 +169,7 @@ class Lead:
 
         """
         felt_s = t + self.lead_s
-        if not len(self._felt):
+        if self._empty:
             return PlatformState(felt_s, estimate.position_map_m, estimate.velocity_map_m_s,
                                  estimate.quaternion_wxyz, estimate.rate_body_rad_s)
         state = np.concatenate((estimate.position_map_m, estimate.velocity_map_m_s,
