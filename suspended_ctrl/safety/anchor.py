@@ -3,16 +3,42 @@
 import numpy as np
 
 from suspended_ctrl.physics.carrier import carrier_step
-from suspended_ctrl.physics.kernel import kernel, OUT_MATRIX, OUT_VECTOR, REAL, TRUTH, VECTOR
+from suspended_ctrl.physics.kernel import (
+    kernel,
+    MATRIX,
+    OUT_MATRIX,
+    OUT_VECTOR,
+    REAL,
+    TRUTH,
+    VECTOR,
+)
 from suspended_ctrl.rig.frozen import Array, frozen
 from suspended_ctrl.rig.rig import Rig
 from suspended_ctrl.safety.settings import SafetySettings
 
+# At the end of a ramp an axis is given this many of its lags to come to rest there.
+_LAGS_TO_REST = 6.0
+
 
 @kernel(OUT_MATRIX(VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, REAL))
-def _ramp(position: Array, velocity: Array, deceleration: Array, lower: Array, upper: Array,
-          dt: float) -> Array:
-    """Setpoint and its rate after ``dt`` of even deceleration to rest, kept inside the travel."""
+def ramp_to_rest(position: Array, velocity: Array, deceleration: Array, lower: Array,
+                 upper: Array, dt: float) -> Array:
+    """
+    Setpoint after ``dt`` of even deceleration, kept inside the travel.
+
+    Parameters
+    ----------
+    position, velocity : ndarray, shape (k,)
+        Setpoint in force and its rate.
+    deceleration, lower, upper : ndarray, shape (k,)
+    dt : float
+
+    Returns
+    -------
+    ndarray, shape (2, k)
+        Position and rate.
+
+    """
     out = np.zeros((2, position.shape[0]))
     for i in range(position.shape[0]):
         slower = max(abs(velocity[i]) - deceleration[i] * dt, 0.0)
@@ -24,37 +50,38 @@ def _ramp(position: Array, velocity: Array, deceleration: Array, lower: Array, u
     return out
 
 
-@kernel(OUT_VECTOR(VECTOR, VECTOR, VECTOR, VECTOR, REAL))
-def _used(measured: Array, expected: Array, middle: Array, half: Array, following: float) -> Array:
-    """Shares used of travel and of following error; nan if a number is not finite."""
-    out = np.zeros(2)
-    for i in range(measured.shape[0]):
-        travel = abs(measured[i] - middle[i]) / half[i]
-        if not np.isfinite(travel):
-            out[:] = np.nan
-            return out
-        out[0] = max(out[0], travel)
-        out[1] = max(out[1], abs(measured[i] - expected[i]) / following)
-    return out
-
-
-@kernel(TRUTH(VECTOR, VECTOR, REAL))
-def _apart(a: Array, b: Array, limit: float) -> bool:
-    widest = 0.0
-    for i in range(a.shape[0]):
-        widest = max(widest, abs(a[i] - b[i]))
-    return widest > limit
+@kernel(TRUTH(VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, REAL, MATRIX, VECTOR, VECTOR, OUT_VECTOR,
+              OUT_VECTOR))
+def _take(position: Array, velocity: Array, expected: Array, middle: Array, half: Array,
+          following: float, direction: Array, zero: Array, offset: Array, out: Array,
+          anchor: Array) -> bool:
+    """Shares of travel and following error, place and velocity of the anchor; false if bad."""
+    total = 0.0
+    for i in range(position.shape[0]):
+        total += abs(position[i]) + abs(velocity[i])
+    if not total < np.inf:
+        return False
+    out[:] = 0.0
+    anchor[:3] = zero
+    anchor[3:] = 0.0
+    for i in range(position.shape[0]):
+        out[0] = max(out[0], abs(position[i] - middle[i]) / half[i])
+        out[1] = max(out[1], abs(position[i] - expected[i]) / following)
+        for j in range(3):
+            anchor[j] += (position[i] + offset[i]) * direction[i, j]
+            anchor[3 + j] += velocity[i] * direction[i, j]
+    return True
 
 
 class AnchorWatch:
     """
     Measured axes against the carrier model of the commands sent, and the commands of a stop.
 
-    While rotor power is on and demands pass, they are the command. When they no longer pass, the
-    setpoint in force is ramped to rest at the carrier's own deceleration from where it is and as
-    fast as the axis moves, so that neither position nor speed steps. Once the axis is at rest
-    there the command is the last measured position, moved only when the measured one has left it
-    by ``anchor_deadband_m``: following noise would let the drive creep.
+    While demands pass, they are the command. When they no longer pass, the setpoint in force is
+    ramped to rest at the carrier's own deceleration from where it is and as fast as the axis
+    moves, so that neither position nor speed steps. Once the axis is at rest there the command is
+    the last measured position, moved only when the measured one has left it by
+    ``anchor_deadband_m``: following noise would let the drive creep.
 
     Parameters
     ----------
@@ -63,12 +90,16 @@ class AnchorWatch:
 
     Attributes
     ----------
+    count : int
+        Number of axes.
     known : bool
         Whether the axes were measured; always true for a fixed anchor.
-    anchor_map_m, velocity_map_m_s : ndarray, shape (3,)
-        Newest measured.
-    travel, following : float
-        Shares used of the two limits.
+    anchor : ndarray, shape (6,)
+        Place and velocity of the anchor in ``map``, newest measured.
+    compared : ndarray, shape (2,)
+        Shares used of travel and of following error.
+    setpoint_m, setpoint_velocity_m_s : ndarray, shape (k,)
+        The command.
 
     """
 
@@ -83,7 +114,7 @@ class AnchorWatch:
                             + settings.anchor_travel_tolerance_m)
         self._limit_m = settings.anchor_following_m
         self._deadband_m = settings.anchor_deadband_m
-        self._settle_s = 6.0 * float(carrier.time_constant_s.max()) if count else 0.0
+        self._settle_s = _LAGS_TO_REST * float(carrier.time_constant_s.max()) if count else 0.0
         self._zero = frozen(np.zeros(count))
         self.position_m: Array = self._zero
         self._expected: Array = self._zero
@@ -93,10 +124,8 @@ class AnchorWatch:
         # Whether there is something to ramp down, and for how long the ramp has been at its end.
         self._moving = False
         self._ramped_s = 0.0
-        self.anchor_map_m: Array = frozen(carrier.anchor_map(self._zero))
-        self.velocity_map_m_s: Array = frozen(np.zeros(3))
-        self.travel = 0.0
-        self.following = 0.0
+        self.anchor = np.array([*carrier.anchor_map(self._zero), 0.0, 0.0, 0.0])
+        self.compared = np.zeros(2)
 
     def measured(self, position_m: Array, velocity_m_s: Array) -> bool:
         """
@@ -112,16 +141,13 @@ class AnchorWatch:
             False if a number is not finite; nothing is changed then.
 
         """
-        first = not self.known
-        used = _used(position_m, position_m if first else self._expected, self._middle,
-                     self._half, self._limit_m)
-        if used[0] != used[0] or not np.isfinite(velocity_m_s).all():
+        carrier = self._carrier
+        if not _take(position_m, velocity_m_s, self._expected if self.known else position_m,
+                     self._middle, self._half, self._limit_m, carrier.direction_map,
+                     carrier.anchor_m, carrier.zero_offset_m, self.compared, self.anchor):
             return False
         self.position_m = position_m
-        self.anchor_map_m = self._carrier.anchor_map(position_m)
-        self.velocity_map_m_s = velocity_m_s @ self._carrier.direction_map
-        self.travel, self.following = float(used[0]), float(used[1])
-        if first:
+        if not self.known:
             self.known = True
             self._rest_at(position_m)
         return True
@@ -129,11 +155,10 @@ class AnchorWatch:
     def _rest_at(self, position_m: Array) -> None:
         self.setpoint_m = self._expected = position_m
         self.setpoint_velocity_m_s = self._expected_velocity = self._zero
-        self._moving = False
 
     def advance(self, dt_s: float) -> None:
         """Let the carrier model run for ``dt_s`` under the setpoint that was in force."""
-        if self.known and self.count:
+        if self.known and self._moving:
             self._expected, self._expected_velocity = carrier_step(
                 self._carrier, self._expected, self._expected_velocity, self.setpoint_m, dt_s)
 
@@ -156,18 +181,16 @@ class AnchorWatch:
             or stays (power on).
 
         """
-        if not self.count or not self.known:
-            return
         if self._moving:
             if self._ramped_s < 0.0:
                 self.setpoint_velocity_m_s = self._expected_velocity
                 self._ramped_s = 0.0
-            ramp = _ramp(self.setpoint_m, self.setpoint_velocity_m_s,
-                         self._carrier.acceleration_max_m_s2, self._carrier.min_m,
-                         self._carrier.max_m, dt_s)
-            self.setpoint_m, self.setpoint_velocity_m_s = ramp[0], ramp[1]
+            carrier = self._carrier
+            self.setpoint_m, self.setpoint_velocity_m_s = ramp_to_rest(
+                self.setpoint_m, self.setpoint_velocity_m_s, carrier.acceleration_max_m_s2,
+                carrier.min_m, carrier.max_m, dt_s)
             if not self.setpoint_velocity_m_s.any():
                 self._ramped_s += dt_s
                 self._moving = self._ramped_s < self._settle_s
-        elif resting and _apart(self.position_m, self.setpoint_m, self._deadband_m):
+        elif resting and np.abs(self.position_m - self.setpoint_m).max() > self._deadband_m:
             self._rest_at(self.position_m)

@@ -2,6 +2,7 @@
 
 from collections import Counter
 from collections.abc import Callable
+import math
 from typing import Any
 
 import numpy as np
@@ -19,23 +20,25 @@ from suspended_ctrl.physics.values import (
 )
 from suspended_ctrl.rig.frozen import Array, frozen
 from suspended_ctrl.rig.rig import Rig
-from suspended_ctrl.safety import motion
+from suspended_ctrl.safety import rows
 from suspended_ctrl.safety.anchor import AnchorWatch
 from suspended_ctrl.safety.balance import ForceBalance
 from suspended_ctrl.safety.gate import Gate
+from suspended_ctrl.safety.motion import take_motion, take_pose
 from suspended_ctrl.safety.rotors import RotorWatch
 from suspended_ctrl.safety.settings import SafetySettings
 from suspended_ctrl.safety.values import EmergencyStop, Heartbeat, Refused, SafetyInputs
 
-_NEVER = -np.inf
+_NEVER = -math.inf
+_VECTOR, _QUATERNION = (3,), (4,)
 
 
 class Arrivals:
     """
     The newest of everything that arrived, and when.
 
-    Sensors are timed by their arrival on the monotonic clock, the pose also by its stamp against
-    the ROS clock; odometry and demands with a stamp outside the window around now do not count as
+    Sensors are timed by their arrival on the monotonic clock, the pose by its stamp against the
+    ROS clock; odometry and demands with a stamp outside the window around now do not count as
     arrived. Whatever has a wrong shape or a number that is not finite is refused and counted.
 
     Parameters
@@ -47,20 +50,24 @@ class Arrivals:
     ----------
     refused : Counter
         Refused messages by kind.
+    at : ndarray, shape (rows.SENDERS,)
+        Monotonic times of the newest arrivals; minus infinity before the first.
     rotors : RotorWatch
     anchor : AnchorWatch
     balance : ForceBalance
-    pose : ndarray, shape (7,), or None
-        Of ``base_link``: position, quaternion. New when ``pose_new``, of ``pose_stamp_s``.
-    odometry : Estimate or None
-        New when ``odometry_new``; ``sigma3_m`` is 3 sigma of its position, on the worst axis.
+    pose : ndarray, shape (7,)
+        Of ``base_link``: position, quaternion; of ``pose_stamp_s``, judged while ``pose_new``.
+    motion : ndarray, shape (13,)
+        Odometry: position, velocity, quaternion, rate; of ``motion_stamp_s``, judged while
+        ``motion_new``, there at all if ``motion_known``.
+    sigma3_m : float
+        3 sigma of the odometry's position on the worst axis; infinite if it is not to be used.
     demand_rad_s, carrier_demand :
-        Newest that passed the gate's bounds; None before the first.
+        Newest demands that passed the gate's bounds; None before the first.
     demand_refused : bool
         Whether the newest rotor demand did not.
-    imu_at, rotors_at, carrier_at, load_at, stop_at, heartbeat_at, odometry_at, demand_at,\
-    carrier_demand_at : float
-        Monotonic times of the newest arrivals; minus infinity before the first.
+    pressed, chain_gone, mission_gone : bool
+        Emergency stop pressed; peers gone.
 
     """
 
@@ -75,22 +82,20 @@ class Arrivals:
         self._rotor_shape = (rig.rotors.count,)
         self._axes_shape = (len(rig.carrier.axes),)
         self.refused: Counter[str] = Counter()
+        self.at = np.full(rows.SENDERS, _NEVER)
         self.now_s = 0.0
-        self.pose: Array | None = None
+        self.pose = np.zeros(7)
         self.pose_stamp_s = _NEVER
-        self.odometry: Estimate | None = None
-        self.odometry_new = self.pose_new = False
-        self.sigma3_m = np.inf
+        self.motion = np.zeros(13)
+        self.motion_stamp_s = 0.0
+        self.motion_known = self.motion_new = self.pose_new = False
+        self.sigma3_m = math.inf
         self.demand_rad_s: Array | None = None
         self.demand_stamp_s = 0.0
         self.demand_refused = False
         self.carrier_demand: tuple[Array, Array] | None = None
-        self.odometry_at = self.imu_at = self.rotors_at = self.carrier_at = _NEVER
-        self.load_at = self.stop_at = self.heartbeat_at = self.demand_at = _NEVER
-        self.carrier_demand_at = _NEVER
-        self.pressed = False
+        self.pressed = self.chain_gone = self.mission_gone = False
         self.load_n = 0.0
-        self.chain_gone = self.mission_gone = False
         self._handlers: dict[type, Callable[[float, Any], bool]] = {
             PoseSample: self._take_pose, ImuSample: self._take_imu,
             RotorSample: self._take_rotors, CarrierSample: self._take_carrier,
@@ -102,11 +107,10 @@ class Arrivals:
 
     def speeds(self) -> tuple[float, float]:
         """Speed in m/s and angular rate in rad/s of the newest odometry; infinite before it."""
-        if self.odometry is None:
-            return np.inf, np.inf
-        x, y, z = self.odometry.velocity_map_m_s.tolist()
-        p, q, r = self.odometry.rate_body_rad_s.tolist()
-        return (x * x + y * y + z * z) ** 0.5, (p * p + q * q + r * r) ** 0.5
+        if not self.motion_known:
+            return math.inf, math.inf
+        values = self.motion.tolist()
+        return math.hypot(*values[3:6]), math.hypot(*values[10:13])
 
     def take(self, t: float, inputs: SafetyInputs, jump_s: float) -> None:
         """
@@ -143,33 +147,34 @@ class Arrivals:
 
     def _take_pose(self, at: float, sample: PoseSample) -> bool:
         position, quaternion = sample.position_map_m, sample.quaternion_wxyz
-        if position.shape != (3,) or quaternion.shape != (4,):
+        stamp = sample.stamp_s
+        if position.shape != _VECTOR or quaternion.shape != _QUATERNION:
             return False
-        if not self._timely(sample.stamp_s, self._s.pose_age_max_s):
+        if not self._timely(stamp, self._s.pose_age_max_s):
             return False
-        pose = motion.base_pose(position, quaternion, self._pose_sensor)
-        if pose[0] != pose[0]:
-            return False
-        # A stamp ahead of now by more than may be is left from before a clock jump.
+        # A known stamp ahead of now by more than may be is left from before a clock jump.
         known = self.pose_stamp_s
-        if sample.stamp_s > known or known > self.now_s + self._s.stamp_ahead_max_s:
-            self.pose, self.pose_stamp_s, self.pose_new = pose, float(sample.stamp_s), True
+        if stamp <= known <= self.now_s + self._s.stamp_ahead_max_s:
+            return True  # late or twice: not wrong, but not new
+        if not take_pose(position, quaternion, self._pose_sensor, self.pose):
+            return False
+        self.pose_stamp_s, self.pose_new = stamp, True
         return True
 
     def _take_imu(self, at: float, sample: ImuSample) -> bool:
         rate, force = sample.rate_rad_s, sample.force_m_s2
-        if rate.shape != (3,) or force.shape != (3,):
+        if rate.shape != _VECTOR or force.shape != _VECTOR:
             return False
         if not self.balance.take(sample.stamp_s, rate, force):
             return False
-        self.imu_at = at
+        self.at[rows.IMU] = at
         return True
 
     def _take_rotors(self, at: float, sample: RotorSample) -> bool:
         speed = sample.speed_rad_s
         if speed.shape != self._rotor_shape or not self.rotors.measured(speed):
             return False
-        self.rotors_at = at
+        self.at[rows.ROTORS] = at
         return True
 
     def _take_carrier(self, at: float, sample: CarrierSample) -> bool:
@@ -179,33 +184,35 @@ class Arrivals:
             return False
         if not self.anchor.measured(position, velocity):
             return False
-        self.carrier_at = at
+        self.at[rows.CARRIER] = at
         return True
 
     def _take_load(self, at: float, sample: TetherLoadSample) -> bool:
         tension = float(sample.tension_n)
-        if not abs(tension) < np.inf:
+        if not math.isfinite(tension):
             return False
         self.load_n = tension
-        self.load_at = at
+        self.at[rows.LOAD] = at
         return True
 
     def _take_odometry(self, at: float, estimate: Estimate) -> bool:
         position, velocity = estimate.position_map_m, estimate.velocity_map_m_s
         quaternion, rate = estimate.quaternion_wxyz, estimate.rate_body_rad_s
-        if (position.shape != (3,) or velocity.shape != (3,) or quaternion.shape != (4,)
-                or rate.shape != (3,)):
+        if (position.shape != _VECTOR or velocity.shape != _VECTOR or rate.shape != _VECTOR
+                or quaternion.shape != _QUATERNION):
             return False
         if not self._timely(estimate.stamp_s, self._s.stamp_age_max_s):
             return False
-        if not motion.sound_motion(position, velocity, quaternion, rate):
+        variance = estimate.covariance
+        x, y, z = variance.item(0, 0), variance.item(1, 1), variance.item(2, 2)
+        if not (0.0 <= x < math.inf and 0.0 <= y < math.inf and 0.0 <= z < math.inf):
             return False
-        covariance = estimate.covariance
-        a, b, c = float(covariance[0, 0]), float(covariance[1, 1]), float(covariance[2, 2])
-        if not (0.0 <= a < np.inf and 0.0 <= b < np.inf and 0.0 <= c < np.inf):
+        if not take_motion(position, velocity, quaternion, rate, self.motion):
             return False
-        self.sigma3_m = 3.0 * max(a, b, c) ** 0.5 if estimate.valid else np.inf
-        self.odometry, self.odometry_at, self.odometry_new = estimate, at, True
+        self.sigma3_m = 3.0 * math.sqrt(max(x, y, z)) if estimate.valid else math.inf
+        self.motion_stamp_s = estimate.stamp_s
+        self.motion_known = self.motion_new = True
+        self.at[rows.ODOMETRY] = at
         return True
 
     def _take_rotor_demand(self, at: float, demand: RotorCommand) -> bool:
@@ -216,7 +223,8 @@ class Arrivals:
         if speed is None:
             return False
         self.demand_rad_s, self.demand_stamp_s = speed, float(demand.stamp_s)
-        self.demand_at, self.demand_refused = at, False
+        self.demand_refused = False
+        self.at[rows.ROTOR_DEMAND] = at
         return True
 
     def _take_carrier_demand(self, at: float, demand: CarrierCommand) -> bool:
@@ -227,16 +235,17 @@ class Arrivals:
         passed = self._gate.carrier(demand.position_m, demand.velocity_m_s)
         if passed is None:
             return False
-        self.carrier_demand, self.carrier_demand_at = passed, at
+        self.carrier_demand = passed
+        self.at[rows.CARRIER_DEMAND] = at
         return True
 
     def _take_emergency_stop(self, at: float, message: EmergencyStop) -> bool:
         self.pressed = message.pressed is not False  # whatever is not a plain false is a stop
-        self.stop_at = at
+        self.at[rows.STOP_LINE] = at
         return True
 
     def _take_heartbeat(self, at: float, message: Heartbeat) -> bool:
-        self.heartbeat_at = at
+        self.at[rows.HEARTBEAT] = at
         return True
 
     def _take_payload(self, at: float, message: PayloadEvent) -> bool:

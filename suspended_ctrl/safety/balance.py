@@ -46,14 +46,6 @@ def _take(rate: Array, force: Array, stamp: float, placement: Array, state: Arra
     return size
 
 
-@kernel(REAL(VECTOR, VECTOR, VECTOR, REAL))
-def _along(force: Array, thrust: Array, direction: Array, mass: float) -> float:
-    total: float = 0.0
-    for i in range(3):
-        total += (mass * force[i] - thrust[i]) * direction[i]
-    return total
-
-
 class ForceBalance:
     """
     Filtered inertial measurements of one rig.
@@ -64,6 +56,8 @@ class ForceBalance:
 
     Attributes
     ----------
+    state : ndarray, shape (10,)
+        Filtered specific force at the centre of mass in body axes, m/s^2; then the filter's own.
     rate_rad_s : float
         Length of the newest angular rate.
 
@@ -74,19 +68,14 @@ class ForceBalance:
         place = np.zeros(3) if sensor is None else sensor.position_m - rig.body.centre_of_mass_m
         turn = np.array([1.0, 0, 0, 0]) if sensor is None else sensor.quaternion_wxyz
         self._placement = frozen([*place, *turn], 7)
-        self._mass_kg = rig.body.mass_kg
-        self._state = np.zeros(10)
-        self._state[9] = -np.inf
+        self.state = np.zeros(10)
+        self.state[9] = -np.inf
         self.rate_rad_s = 0.0
 
     def take(self, stamp_s: float, rate_rad_s: Array, force_m_s2: Array) -> bool:
         """Take in one sample in sensor axes, shapes (3,); False if a number is not finite."""
-        size = _take(rate_rad_s, force_m_s2, stamp_s, self._placement, self._state)
+        size = _take(rate_rad_s, force_m_s2, stamp_s, self._placement, self.state)
         if size != size:
             return False
         self.rate_rad_s = size
         return True
-
-    def tension_n(self, thrust_body_n: Array, direction_body: Array) -> float:
-        """Pull in N along ``direction_body``, shape (3,), with the rotors' force, shape (3,)."""
-        return float(_along(self._state, thrust_body_n, direction_body, self._mass_kg))

@@ -4,37 +4,37 @@ from collections.abc import Sequence
 
 import numpy as np
 
-from suspended_ctrl.physics.kernel import kernel, OUT_VECTOR, REAL, VECTOR
+from suspended_ctrl.physics.kernel import kernel, OUT_VECTOR, REAL, TRUTH, VECTOR
 from suspended_ctrl.rig.frozen import Array, frozen
 from suspended_ctrl.rig.rig import Rig
 from suspended_ctrl.safety.settings import SafetySettings
 
 
-@kernel(OUT_VECTOR(VECTOR, VECTOR, VECTOR, REAL))
-def bounded(demand: Array, lower: Array, upper: Array, spare: float) -> Array:
+@kernel(TRUTH(VECTOR, VECTOR, VECTOR, REAL, OUT_VECTOR))
+def bounded(demand: Array, lower: Array, upper: Array, spare: float, out: Array) -> bool:
     """
-    Demand inside its bounds.
+    Put a demand inside its bounds.
 
     Parameters
     ----------
     demand, lower, upper : ndarray, shape (n,)
     spare : float
         Overshoot that is clipped, as a share of the range.
+    out : ndarray, shape (n,)
+        Out: the demand, overshoot clipped.
 
     Returns
     -------
-    ndarray, shape (n,)
-        The demand, overshoot clipped; all nan if an entry is not finite or further out.
+    bool
+        False if an entry is not finite or further out; ``out`` is of no use then.
 
     """
-    out = np.empty(demand.shape[0])
     for i in range(demand.shape[0]):
         allowed = spare * (upper[i] - lower[i])
         if not (lower[i] - allowed <= demand[i] <= upper[i] + allowed):
-            out[:] = np.nan
-            return out
+            return False
         out[i] = min(max(demand[i], lower[i]), upper[i])
-    return out
+    return True
 
 
 def in_order(names: Sequence[str], values: Sequence[float], wanted: Sequence[str]) -> Array | None:
@@ -86,22 +86,24 @@ class Gate:
         self._axis_lower = frozen(carrier.min_m)
         self._axis_upper = frozen(carrier.max_m)
         self._axis_speed = frozen(carrier.speed_max_m_s)
-        self._axis_speed_back = frozen(-carrier.speed_max_m_s)
+        self._axis_back = frozen(-carrier.speed_max_m_s)
 
     def rotors(self, speed_rad_s: Array) -> Array | None:
         """Rotor speeds that pass, shape (n,), or None."""
         if speed_rad_s.shape != self._rotor_upper.shape:
             return None
-        out = bounded(speed_rad_s, self._rotor_lower, self._rotor_upper, self._spare)
-        return None if out[0] != out[0] else out
+        out = np.empty(speed_rad_s.shape)
+        if not bounded(speed_rad_s, self._rotor_lower, self._rotor_upper, self._spare, out):
+            return None
+        return out
 
     def carrier(self, position_m: Array, velocity_m_s: Array) -> tuple[Array, Array] | None:
         """Axis positions and velocities that pass, shapes (k,), or None."""
         shape = self._axis_upper.shape
         if position_m.shape != shape or velocity_m_s.shape != shape:
             return None
-        place = bounded(position_m, self._axis_lower, self._axis_upper, self._spare)
-        speed = bounded(velocity_m_s, self._axis_speed_back, self._axis_speed, self._spare)
-        if place[0] != place[0] or speed[0] != speed[0]:
-            return None
-        return place, speed
+        place, speed = np.empty(shape), np.empty(shape)
+        if (bounded(position_m, self._axis_lower, self._axis_upper, self._spare, place)
+                and bounded(velocity_m_s, self._axis_back, self._axis_speed, self._spare, speed)):
+            return place, speed
+        return None

@@ -77,6 +77,7 @@ def limit_table(rig: Rig, settings: SafetySettings) -> tuple[Limit, ...]:
         Limit('emergency_stop', 0, 0.0, 1.0, 'share', 'emergency stop pressed'),
         Limit('emergency_stop_silent', 0, 0.0, s.emergency_stop_silence_s, 's',
               'silence on the emergency stop line'),
+        Limit('clock_jump', 1, 0.0, s.clock_jump_s, 's', 'step of the ROS clock', powered=True),
         Limit('tick_late', 0, 0.0, s.tick_late_s, 's', 'gap between two steps', powered=True),
         Limit('peer_gone', 0, 0.0, 1.0, 'share', 'estimator, controller or allocator gone'),
         Limit('tether_lost', 0, 0.040, s.tether_lost_fraction, 'share',
@@ -104,7 +105,6 @@ def limit_table(rig: Rig, settings: SafetySettings) -> tuple[Limit, ...]:
               'anchor off what was commanded'),
         Limit('carrier_demand_stale', 1, 0.0, s.carrier_demand_silence_s, 's',
               'silence of the carrier demand', powered=True),
-        Limit('clock_jump', 1, 0.0, s.clock_jump_s, 's', 'step of the ROS clock', powered=True),
         Limit('standstill', 1, 0.1, 1.0, 'share', 'moving while held', powered=True),
         Limit('hold_timeout', 1, 0.0, s.hold_timeout_s, 's', 'held for too long', powered=True),
         Limit('mission_gone', 2, 0.0, 1.0, 'share', 'mission player gone', powered=True),
@@ -114,10 +114,3 @@ def limit_table(rig: Rig, settings: SafetySettings) -> tuple[Limit, ...]:
     assert tuple(row.name for row in rows[:len(JUDGED)]) == JUDGED
     return rows
 
-
-(OUTSIDE, KEEP_IN, SWING, TILT, RATES, SPEED, TETHER_SLACK, OVERLOAD, HOOK_ANGLE, EMERGENCY_STOP,
- EMERGENCY_STOP_SILENT, TICK_LATE, PEER_GONE, TETHER_LOST, ROTOR_OVERSPEED, ODOMETRY_STALE,
- DEMAND_STALE, DEMAND_OUT_OF_BOUNDS, STOP_TIMEOUT, ROTOR_NOT_FOLLOWING, ROTOR_STATES_STALE,
- POSE_STALE, POSE_REJECTED, ESTIMATOR_INCONSISTENT, CARRIER_STATES_STALE, ANCHOR_TRAVEL,
- ANCHOR_FOLLOWING, CARRIER_DEMAND_STALE, CLOCK_JUMP, STANDSTILL, HOLD_TIMEOUT, MISSION_GONE,
- OPERATOR_SILENT) = range(33)

@@ -6,12 +6,12 @@ from suspended_ctrl.physics.rotation import rotate
 from suspended_ctrl.physics.values import CarrierCommand, RotorCommand
 from suspended_ctrl.rig.frozen import frozen
 from suspended_ctrl.rig.rig import Rig
-from suspended_ctrl.safety import limits as row
+from suspended_ctrl.safety import rows
 from suspended_ctrl.safety.arrivals import Arrivals
 from suspended_ctrl.safety.limits import Limit, limit_table
 from suspended_ctrl.safety.sequence import next_state, ROTOR_POWER
 from suspended_ctrl.safety.settings import SafetySettings
-from suspended_ctrl.safety.shares import hold_off, Shares
+from suspended_ctrl.safety.shares import Shares
 from suspended_ctrl.safety.swing import predict_cut
 from suspended_ctrl.safety.values import (
     Reply,
@@ -22,7 +22,7 @@ from suspended_ctrl.safety.values import (
 )
 
 # Limits that need an inertial sensor for a controlled stop: without one they are cut at once.
-_BLIND = frozenset((row.POSE_STALE, row.POSE_REJECTED, row.ESTIMATOR_INCONSISTENT))
+_BLIND = frozenset((rows.POSE_STALE, rows.POSE_REJECTED, rows.ESTIMATOR_INCONSISTENT))
 
 Values = tuple[tuple[str, float], ...]
 
@@ -65,7 +65,7 @@ class SafetySupervisor:
         self.limits: tuple[Limit, ...] = limit_table(rig, self.settings)
         self.state = 'locked'
         self._seen = Arrivals(rig, self.settings)
-        self._shares = Shares(rig, self.settings, self.limits)
+        self._shares = Shares(rig, self.settings)
         count = len(self.limits)
         self._since = np.full(count, np.inf)
         self._hold_off_s = frozen([limit.hold_off_s for limit in self.limits])
@@ -117,8 +117,8 @@ class SafetySupervisor:
 
         powered = self.state in ROTOR_POWER
         margin = np.empty(len(self.limits))
-        worst = hold_off(t, shares.used, self._since, self._hold_off_s, self._powered_only,
-                         powered, self._broken, margin)
+        worst = rows.hold_off(t, shares.used, self._since, self._hold_off_s, self._powered_only,
+                              powered, self._broken, margin)
         self._events, self._changes = [], []
         if powered:
             if worst == 2:
@@ -155,8 +155,8 @@ class SafetySupervisor:
 
     def _check(self, t: float, worst: int) -> None:
         """Without rotor power: is every check green; an emergency stop latches."""
-        if self._broken[row.EMERGENCY_STOP] and self.state != 'tripped':
-            self._raised = {row.EMERGENCY_STOP: 0}
+        if self._broken[rows.EMERGENCY_STOP] and self.state != 'tripped':
+            self._raised = {rows.EMERGENCY_STOP: 0}
             self._events.append(SafetyEvent(t, 'emergency_stop', 0))
             self._go(t, 'emergency', 'emergency_stop')
         elif worst == 0:
@@ -169,7 +169,7 @@ class SafetySupervisor:
         new: list[tuple[int, int]] = []
         for i in np.flatnonzero(self._broken == 2.0).tolist():
             category = self._category(i, t)
-            if i == row.ROTOR_NOT_FOLLOWING and self._goes_on(t):
+            if i == rows.ROTOR_NOT_FOLLOWING and self._goes_on(t):
                 continue
             if category < self._raised.get(i, 3) and (category < 2 or self.state == 'live'):
                 new.append((category, i))
@@ -191,7 +191,7 @@ class SafetySupervisor:
             return limit.category
         if limit.cut is not None and self._shares.used[i] > limit.cut:
             return 0
-        blind = t - self._seen.imu_at > self.settings.imu_gone_s
+        blind = t - self._seen.at[rows.IMU] > self.settings.imu_gone_s
         return 0 if i in _BLIND and blind else 1
 
     def _goes_on(self, t: float) -> bool:
@@ -199,7 +199,7 @@ class SafetySupervisor:
         rotors = self._seen.rotors
         if len(rotors.lost) >= self.settings.rotor_losses_tolerated:
             return False
-        values = self._figures(row.ROTOR_NOT_FOLLOWING)
+        values = self._figures(rows.ROTOR_NOT_FOLLOWING)
         self._events.append(SafetyEvent(t, 'rotor_not_following', None, values))
         rotors.give_up(rotors.worst)
         return True
@@ -253,7 +253,7 @@ class SafetySupervisor:
             return Reply('reset', self.state in ('locked', 'ready'),
                          f'nothing to reset: state is {self.state}')
         standing = [self.limits[i].name for i in self._raised if self._broken[i]]
-        if self._broken[row.EMERGENCY_STOP] and 'emergency_stop' not in standing:
+        if self._broken[rows.EMERGENCY_STOP] and 'emergency_stop' not in standing:
             standing.append('emergency_stop')
         if standing:
             return Reply('reset', False, 'cause stands: ' + ', '.join(standing))
@@ -270,7 +270,7 @@ class SafetySupervisor:
         share = float(self._shares.used[i])
         figure = limit.limit / share if limit.lower else limit.limit * share
         values: Values = ((f'measured_{limit.unit}', figure), (f'limit_{limit.unit}', limit.limit))
-        if i == row.ROTOR_NOT_FOLLOWING:
+        if i == rows.ROTOR_NOT_FOLLOWING:
             rotors = self._seen.rotors
             name = self._rig.rotors.names[rotors.worst]
             values += ((f'{name}_measured_rad_s', float(rotors.measured_rad_s[rotors.worst])),
@@ -279,12 +279,11 @@ class SafetySupervisor:
 
     def _cut_figures(self) -> Values:
         """Swing that a cut leaves behind, as far as the last odometry knows."""
-        odometry, anchor = self._seen.odometry, self._seen.anchor
-        if odometry is None:
+        motion, anchor = self._seen.motion, self._seen.anchor.anchor
+        if not self._seen.motion_known:
             return ()
-        thrust = rotate(odometry.quaternion_wxyz, self._seen.rotors.thrust_body_n)
-        swing = predict_cut(self._rig, odometry.position_map_m, odometry.velocity_map_m_s,
-                            anchor.anchor_map_m, thrust)
+        thrust = rotate(motion[6:10], self._seen.rotors.thrust_body_n)
+        swing = predict_cut(self._rig, motion[:3], motion[3:6], anchor[:3], thrust)
         return (('swing_radius_m', swing.radius_m),
                 *((f'swing_{axis}_{end}_m', float(box[k]))
                   for end, box in (('min', swing.lower_map_m), ('max', swing.upper_map_m))
@@ -298,7 +297,7 @@ class SafetySupervisor:
     def _rotor_command(self, t: float) -> RotorCommand:
         seen = self._seen
         if (self.state in ROTOR_POWER and seen.demand_rad_s is not None
-                and t - seen.demand_at <= self.settings.demand_silence_s):
+                and t - seen.at[rows.ROTOR_DEMAND] <= self.settings.demand_silence_s):
             self._command = seen.demand_rad_s
             return RotorCommand(seen.demand_stamp_s, self._command)
         self._command = self._zero
@@ -310,7 +309,7 @@ class SafetySupervisor:
             return None
         demand = seen.carrier_demand
         if (self.state == 'live' and demand is not None
-                and t - seen.carrier_demand_at <= self.settings.carrier_demand_silence_s):
+                and t - seen.at[rows.CARRIER_DEMAND] <= self.settings.carrier_demand_silence_s):
             anchor.follow(*demand)
         else:
             anchor.stop(gap_s, self.state not in ROTOR_POWER)
