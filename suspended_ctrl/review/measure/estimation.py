@@ -45,7 +45,7 @@ def estimation(log: RunLog, path: OnPath) -> Section:
     pose = normalised_square(np.hstack((position, attitude)), estimate.pose_covariance[on])
     speed = normalised_square(velocity, estimate.twist_covariance[on][:, :3, :3])
     if pose is not None and speed is not None:
-        result['nees_mean'] = finite(np.mean(pose + speed))
+        result['nees_mean'] = finite(float(np.mean(pose + speed)))
     return result
 
 
