@@ -86,7 +86,9 @@ def move_carrier(carrier: Array, carrier_fixed: Array, step: float) -> None:
         wanted = max(wanted, -_stoppable(position - carrier_fixed[i, LOWER] + coming, limit, step))
         change = limit * step
         speed = min(max(wanted, velocity - change), velocity + change)
-        carrier[POSITION, i] = position + 0.5 * step * (velocity + speed)
+        position += 0.5 * step * (velocity + speed)
+        # An axis that stops within the step does so on the end of travel, not a little beyond it.
+        carrier[POSITION, i] = min(max(position, carrier_fixed[i, LOWER]), carrier_fixed[i, UPPER])
         carrier[VELOCITY, i] = speed
 
 

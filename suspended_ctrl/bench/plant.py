@@ -164,10 +164,11 @@ class Plant:
         """Everything about the state, copied."""
         qpos, qvel, world = self.qpos.copy(), self.qvel.copy(), self.world.copy()
         rotor, carrier = self.rotor.copy(), self.carrier.copy()
-        for array in (qpos, qvel, world, rotor, carrier):
+        acceleration = (qvel[:3] - self.before[:3]) / self.step_s
+        for array in (qpos, qvel, world, rotor, carrier, acceleration):
             array.setflags(write=False)
-        return Truth(self.t_s, qpos[:3], qvel[:3], qpos[3:], qvel[3:],
-                     (qvel[:3] - self.before[:3]) / self.step_s, self.tension(), rotor[k.SPEED],
+        return Truth(self.t_s, qpos[:3], qvel[:3], qpos[3:], qvel[3:], acceleration,
+                     self.tension(), rotor[k.SPEED],
                      rotor[k.THRUST], world[k.ANCHOR:k.ANCHOR + 3], carrier[k.POSITION],
                      carrier[k.VELOCITY], self.payload)
 

@@ -2,9 +2,9 @@
 
 from suspended_ctrl.rig.rig import Rig
 
-# With MuJoCo's fourth-order Runge-Kutta steps this long keep a free top's precession to 1e-9 and a
-# pendulum's energy to 1e-8 over a minute (test/bench/test_free_body.py, test_tether.py); shorter
-# ones would only cost time.
+# With MuJoCo's fourth-order Runge-Kutta steps this long keep a free top's precession over 7 s to
+# 1e-11 of its spin (half-implicit Euler at half the step: 1e-2) and an undamped swing's energy
+# over a minute to 1e-6 J (test/bench/test_free_body.py, test_tether.py).
 STEP_MAX_S = 0.0025
 # Not shorter than this for the sake of an odd rate.
 _STEP_MIN_S = 0.0005

@@ -190,8 +190,8 @@ def test_energy_stays_over_a_minute_of_swing_and_bounce():
     before = energy()
     for _ in range(24000):
         plant.step()
-    # 3 J move back and forth; a Runge-Kutta step loses the sixth power of phase a step.
-    assert energy() == pytest.approx(before, abs=1e-5)
+    # Joules move back and forth; a Runge-Kutta step loses the sixth power of its phase.
+    assert energy() == pytest.approx(before, abs=1e-6)
 
 
 def test_cut_and_snagged():
