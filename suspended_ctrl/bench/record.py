@@ -146,6 +146,10 @@ def _diagnostics(t: float, outputs: LoopOutputs) -> Diagnostics:
              'effort_allocator': outputs.effort}
     statuses = tuple(
         NodeStatus(name, 0 if part else 3, '' if part else 'silent',
-                   {key: f'{value:.6g}' for key, value in part.diagnostics.items()} if part else {})
+                   _texts(part.diagnostics) if part else {})
         for name, part in parts.items())
     return Diagnostics(t, statuses)
+
+
+def _texts(figures: dict[str, float]) -> dict[str, str]:
+    return {key: f'{value:.6g}' for key, value in figures.items()}

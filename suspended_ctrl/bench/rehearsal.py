@@ -1,7 +1,7 @@
 """A whole mission against the bench in one process: deterministic, faster than real time."""
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 import time
 
 from suspended_ctrl.bench.bench import Bench
@@ -41,7 +41,7 @@ class RehearsalSettings:
     seed: int = 0
     mismatch: str = 'default'
     wind_m_s: float = 0.0
-    loop: LoopSettings = LoopSettings()
+    loop: LoopSettings = field(default_factory=LoopSettings)
 
 
 class Rehearsal:
@@ -136,7 +136,17 @@ class Rehearsal:
         outputs = loop.step(t, inputs)
         spent = time.thread_time() - started
         self._recorder.tick(t, inputs, outputs, bench.truth(), spent)
+        self._plan(t)
         return outputs
+
+    def _plan(self, t: float) -> None:
+        """Plan the carrier outside the tick; the allocator puts it into effect a period later."""
+        allocator = self.loop.allocator
+        request = allocator.plan_request(t)
+        if request is not None:
+            started = time.thread_time()
+            allocator.take_plan(allocator.solve_plan(request))
+            self._recorder.plan(time.thread_time() - started)
 
     def _send(self, t: float, before: LoopOutputs | None) -> None:
         """Hand the last tick's commands to the drives after the transport's delay."""

@@ -2,9 +2,9 @@
 How fast a law may be on a given rig.
 
 The law ``w^2 e + 2 zeta w e'`` on a double integrator crosses over at
-``w sqrt(2 zeta^2 + sqrt(4 zeta^4 + 1))`` with phase margin ``atan(2 zeta wc / w)``; a delay of L costs
-``wc L`` of it (Astrom and Wittenmark, Computer-Controlled Systems). Prediction takes the rotors' lag
-out as far as it is known; the margin below is kept against half of it being wrong.
+``w sqrt(2 zeta^2 + sqrt(4 zeta^4 + 1))`` with phase margin ``atan(2 zeta wc / w)``; a delay of L
+costs ``wc L`` of it (Astrom and Wittenmark, Computer-Controlled Systems). Prediction takes the
+rotors' lag out as far as it is known; the margin below is kept against half of it being wrong.
 """
 
 import math

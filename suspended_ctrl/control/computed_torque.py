@@ -1,10 +1,10 @@
-"""Computed torque: linear error dynamics of chosen bandwidth about the reference, model inverted."""
+"""Computed torque: error dynamics of a chosen bandwidth about the reference, model inverted."""
 
 import numpy as np
 
 from suspended_ctrl.control.bandwidth import checked_bandwidth
 from suspended_ctrl.control.values import LawInputs
-from suspended_ctrl.physics.kernel import MATRIX, OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.physics.rigid_body import point_acceleration, wrench_for
 from suspended_ctrl.physics.rotation import (
     attitude_error,
@@ -60,8 +60,9 @@ class ComputedTorque:
     """
     The default law.
 
-    Position error obeys ``e'' + 2 zeta w e' + w^2 e = 0``, attitude error (Lee, Leok and McClamroch
-    2010) the same, with gravity, the gyroscopic torque and the estimated disturbance taken out.
+    Position error obeys ``e'' + 2 zeta w e' + w^2 e = 0``, attitude error (Lee, Leok and
+    McClamroch 2010) the same, with gravity, the gyroscopic torque and the estimated disturbance
+    taken out.
 
     Parameters
     ----------

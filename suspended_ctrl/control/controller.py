@@ -4,13 +4,13 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from suspended_ctrl.control.laws import LAWS, Law
+from suspended_ctrl.control.laws import Law, LAWS
 from suspended_ctrl.control.stop_path import path_to_rest
 from suspended_ctrl.control.values import ControlInputs, ControlOutputs, LawInputs
 from suspended_ctrl.physics.equilibrium import anchor_at_zero, equilibrium
 from suspended_ctrl.physics.lead import Lead, PlatformState
 from suspended_ctrl.physics.loaded_body import loaded_body
-from suspended_ctrl.physics.reference import SPACING_MAX_S, Reference, held
+from suspended_ctrl.physics.reference import held, Reference, SPACING_MAX_S
 from suspended_ctrl.physics.values import CarrierPlan, Estimate, Wrench
 from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Rig

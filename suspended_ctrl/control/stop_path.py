@@ -15,7 +15,8 @@ _PEAK_OVER_MEAN = 1.875
 _SHORTEST_S = 0.5
 
 
-def path_to_rest(start: ReferencePoint, felt: PlatformState, goal_map_m: Array | None) -> Reference:
+def path_to_rest(start: ReferencePoint, felt: PlatformState,
+                 goal_map_m: Array | None) -> Reference:
     """
     Brake from where the reference was; then, given a goal, go there and level off.
 

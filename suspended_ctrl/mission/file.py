@@ -1,7 +1,7 @@
 """The mission file: where to go, how fast, what hangs on, and what counts as accepted."""
 
-import os
 from dataclasses import dataclass
+import os
 from pathlib import Path
 from typing import Annotated, Literal
 
@@ -14,9 +14,9 @@ from suspended_ctrl.rig.section import (
     NonNegative,
     Number,
     Positive,
+    refuse,
     Section,
     Vector3,
-    refuse,
 )
 from suspended_ctrl.rig.shared_files import find_file
 from suspended_ctrl.rig.yaml_file import read_file

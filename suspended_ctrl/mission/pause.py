@@ -5,7 +5,7 @@ from dataclasses import replace
 import numpy as np
 
 from suspended_ctrl.physics.path import minimum_jerk
-from suspended_ctrl.physics.reference import SPACING_MAX_S, Reference
+from suspended_ctrl.physics.reference import Reference, SPACING_MAX_S
 from suspended_ctrl.rig.frozen import Array, frozen
 
 RAMP_S = 1.0

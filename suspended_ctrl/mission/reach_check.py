@@ -45,10 +45,11 @@ class ReachUse:
         """Say where, in which direction, by how much, and what speed would do."""
         place = ', '.join(f'{x:.2f}' for x in self.position_map_m)
         asked = ', '.join(f'{name} {value:.1f}' for name, value in zip(
-            _COMPONENTS, self.wrench, strict=True) if abs(value) > 0.05 * np.abs(self.wrench).max())
+            _COMPONENTS, self.wrench, strict=True)
+            if abs(value) > 0.05 * np.abs(self.wrench).max())
         # Inertial forces go with the square of speed along a given path.
         speed = self.speed_m_s / np.sqrt(self.share)
-        return (f'{self.share:.2f} times the rotors\' reach at ({place}) m, {self.time_s:.2f} s '
+        return (f"{self.share:.2f} times the rotors' reach at ({place}) m, {self.time_s:.2f} s "
                 f'in, where {asked} (N, N m) is asked of them; allowed is 1: a peak speed of '
                 f'about {speed:.2f} m/s there would do, or timing: feasible, or out_of_reach: '
                 'attempt')

@@ -6,10 +6,10 @@ import numpy as np
 
 from suspended_ctrl.mission.feasible import shortest_duration_s
 from suspended_ctrl.mission.file import Mission, MoveTo
-from suspended_ctrl.mission.reach_check import ReachUse, check_keep_in, use_of_reach
+from suspended_ctrl.mission.reach_check import check_keep_in, ReachUse, use_of_reach
 from suspended_ctrl.physics.equilibrium import equilibrium
-from suspended_ctrl.physics.loaded_body import LoadedBody, loaded_body
-from suspended_ctrl.physics.path import Progress, joined, minimum_jerk, straight, trapezoid
+from suspended_ctrl.physics.loaded_body import loaded_body, LoadedBody
+from suspended_ctrl.physics.path import joined, minimum_jerk, Progress, straight, trapezoid
 from suspended_ctrl.physics.reference import Reference
 from suspended_ctrl.physics.rotation import from_yaw_pitch_roll, to_yaw_pitch_roll
 from suspended_ctrl.physics.values import Payload
@@ -153,8 +153,8 @@ def timed(mission: Mission) -> TimedMission:
     reach = use_of_reach(rig, reference, builder.loads)
     if reach.share > 1.0 and file.out_of_reach == 'refuse':
         raise InputError(f'{mission.path}: path: {reach.sentence()}')
-    return TimedMission(mission, reference, builder.parts[0], path_start_s, builder.time_s, tuple(builder.payloads),
-                        frozen(np.array(builder.waypoints)), reach)
+    return TimedMission(mission, reference, builder.parts[0], path_start_s, builder.time_s,
+                        tuple(builder.payloads), frozen(np.array(builder.waypoints)), reach)
 
 
 def _goal_attitude(quaternion: Array, move: MoveTo) -> Array:

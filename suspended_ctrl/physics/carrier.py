@@ -1,8 +1,8 @@
-"""The carrier: each axis follows its setpoint with a first-order lag, inside speed and acceleration."""
+"""The carrier: each axis follows its setpoint with a lag, inside its speed and acceleration."""
 
 import numpy as np
 
-from suspended_ctrl.physics.kernel import OUT_MATRIX, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, OUT_MATRIX, REAL, VECTOR
 from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Carrier
 

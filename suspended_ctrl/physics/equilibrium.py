@@ -18,7 +18,8 @@ class Equilibrium:
     tension_n: float
 
 
-def equilibrium(rig: Rig, anchor_map_m: Array | None = None, payload_kg: float = 0.0) -> Equilibrium:
+def equilibrium(rig: Rig, anchor_map_m: Array | None = None,
+                payload_kg: float = 0.0) -> Equilibrium:
     """
     Rest position under the anchor, platform level.
 

@@ -7,9 +7,9 @@ but not of a file that it calls into; kernels call only this folder's, so the ca
 digest of this folder in its name.
 """
 
+from collections.abc import Callable
 import hashlib
 import os
-from collections.abc import Callable
 from pathlib import Path
 from typing import Any, TypeVar
 

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from suspended_ctrl.physics.kernel import MATRIX, OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.physics.loaded_body import LoadedBody
 from suspended_ctrl.physics.rigid_body import acceleration
 from suspended_ctrl.physics.rotation import (

@@ -1,4 +1,4 @@
-"""The moving mass as a whole: platform, payload, and the third of the tether that goes with the hook."""
+"""The moving mass as a whole: platform, payload, and a third of the tether at the hook."""
 
 from dataclasses import dataclass
 

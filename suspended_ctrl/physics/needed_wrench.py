@@ -4,7 +4,7 @@ import numpy as np
 
 from suspended_ctrl.physics.carrier import carrier_step
 from suspended_ctrl.physics.equilibrium import equilibrium
-from suspended_ctrl.physics.kernel import MATRIX, OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.physics.loaded_body import LoadedBody
 from suspended_ctrl.physics.reference import Reference
 from suspended_ctrl.physics.rigid_body import point_acceleration, wrench_for
@@ -12,7 +12,6 @@ from suspended_ctrl.physics.rotation import cross
 from suspended_ctrl.physics.tether import tether_wrench
 from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Rig
-
 
 # What a carrier of decimetres a second can use of the path to come.
 _PREVIEW_S = 8.0

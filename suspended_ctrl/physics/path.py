@@ -4,7 +4,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from suspended_ctrl.physics.reference import SPACING_MAX_S, Reference
+from suspended_ctrl.physics.reference import Reference, SPACING_MAX_S
 from suspended_ctrl.physics.rotation import (
     conjugate,
     exponential,
@@ -17,7 +17,7 @@ from suspended_ctrl.rig.frozen import Array, frozen
 
 @dataclass(frozen=True, eq=False)
 class Progress:
-    """Path fraction over time, 0 to 1: ``time_s``, ``s``, its rate and its second rate, shape (m,)."""
+    """Path fraction ``s`` over ``time_s``, 0 to 1, with its rate and second rate, shape (m,)."""
 
     time_s: Array
     s: Array

@@ -8,7 +8,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
-from suspended_ctrl.physics.kernel import MATRIX, OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.physics.rotation import (
     apply,
     conjugate,

@@ -3,7 +3,7 @@
 import numpy as np
 
 from suspended_ctrl.physics.constants import GRAVITY_M_S2
-from suspended_ctrl.physics.kernel import MATRIX, OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.physics.rotation import apply, cross, rotate, rotate_back
 from suspended_ctrl.rig.frozen import Array
 
@@ -84,7 +84,7 @@ def wrench_for(mass: float, inertia: Array, quaternion: Array, rate_body: Array,
 
 @kernel(OUT_VECTOR(VECTOR, VECTOR, VECTOR, VECTOR))
 def point_velocity(velocity_map: Array, quaternion: Array, rate_body: Array, arm: Array) -> Array:
-    """Velocity in map of a body point at ``arm`` (body axes) from the point that has ``velocity_map``."""
+    """Velocity in map of the body point at ``arm`` (body axes) from one with ``velocity_map``."""
     out: Array = velocity_map + rotate(quaternion, cross(rate_body, arm))
     return out
 
@@ -92,7 +92,7 @@ def point_velocity(velocity_map: Array, quaternion: Array, rate_body: Array, arm
 @kernel(OUT_VECTOR(VECTOR, VECTOR, VECTOR, VECTOR, VECTOR))
 def point_acceleration(acceleration_map: Array, quaternion: Array, rate_body: Array,
                        rate_dot_body: Array, arm: Array) -> Array:
-    """Acceleration in map of a body point at ``arm`` from the point that has ``acceleration_map``."""
+    """Acceleration in map of the body point at ``arm`` from one with ``acceleration_map``."""
     turned = cross(rate_dot_body, arm) + cross(rate_body, cross(rate_body, arm))
     out: Array = acceleration_map + rotate(quaternion, turned)
     return out

@@ -8,7 +8,7 @@ Formulas: J. Solà, Quaternion kinematics for the error-state Kalman filter, arX
 import numpy as np
 from transforms3d.euler import euler2quat, quat2euler
 
-from suspended_ctrl.physics.kernel import MATRIX, OUT_MATRIX, OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.rig.frozen import Array
 
 # Below this angle series replace quotients; their next term is under 1e-17 there.
@@ -66,7 +66,8 @@ def normalised(q: Array) -> Array:
     norm = np.sqrt(q[0] * q[0] + q[1] * q[1] + q[2] * q[2] + q[3] * q[3])
     if q[0] < 0.0:
         norm = -norm
-    return q / norm
+    out: Array = q / norm
+    return out
 
 
 @kernel(OUT_MATRIX(VECTOR))
@@ -197,7 +198,8 @@ def angle_between(p: Array, q: Array) -> float:
     """Angle in rad of the rotation from ``p`` to ``q``, 0 to pi."""
     d = multiply(conjugate(p), q)
     sine = np.sqrt(d[1] * d[1] + d[2] * d[2] + d[3] * d[3])
-    return 2.0 * np.arctan2(sine, abs(d[0]))
+    angle: float = 2.0 * np.arctan2(sine, abs(d[0]))
+    return angle
 
 
 @kernel(OUT_VECTOR(MATRIX, VECTOR))

@@ -8,7 +8,7 @@ spinning mass resists tilting (gyroscopic torque).
 
 import numpy as np
 
-from suspended_ctrl.physics.kernel import MATRIX, OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.physics.rotation import cross
 from suspended_ctrl.rig.frozen import Array, frozen
 from suspended_ctrl.rig.rig import Rotors
@@ -110,7 +110,8 @@ class RotorModel:
 
     def thrust(self, speed_rad_s: Array) -> Array:
         """Thrust in N at each speed, shape (n,), odd in speed."""
-        out: Array = _thrust(speed_rad_s, self.rotors.curve_speed_rad_s, self.rotors.curve_thrust_n)
+        rotors = self.rotors
+        out: Array = _thrust(speed_rad_s, rotors.curve_speed_rad_s, rotors.curve_thrust_n)
         return out
 
     def speed_for_thrust(self, thrust_n: Array) -> Array:
@@ -119,7 +120,8 @@ class RotorModel:
             thrust_n, self.rotors.curve_speed_rad_s, self.rotors.curve_thrust_n)
         return out
 
-    def wrench(self, speed_rad_s: Array, speed_rate_rad_s2: Array, rate_body_rad_s: Array) -> Array:
+    def wrench(self, speed_rad_s: Array, speed_rate_rad_s2: Array,
+               rate_body_rad_s: Array) -> Array:
         """
         Force and torque on the body from the rotors.
 

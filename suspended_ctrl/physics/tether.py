@@ -7,7 +7,7 @@ a half; both are under a hundredth of the platform's here, so only the hook's sh
 
 import numpy as np
 
-from suspended_ctrl.physics.kernel import OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.physics.rotation import cross, rotate, rotate_back
 from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Tether
@@ -49,7 +49,8 @@ def hook_force(hook_map: Array, hook_velocity_map: Array, anchor_map: Array,
     return out
 
 
-@kernel(OUT_VECTOR(VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, REAL, REAL, REAL))
+@kernel(OUT_VECTOR(VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, REAL, REAL,
+                   REAL))
 def _wrench(position: Array, velocity: Array, quaternion: Array, rate_body: Array, anchor: Array,
             anchor_velocity: Array, hook: Array, centre: Array, rest_length: float,
             stiffness: float, damping: float) -> Array:

@@ -3,7 +3,8 @@ The values that sensors, the four parts and the drivers exchange.
 
 Every array is float64 and should be treated as read-only; the constructors that users call freeze
 them with ``frozen``. Stamps are seconds of the host's clock. Quaternions are (w, x, y, z), body to
-map. Poses and velocities speak of the ``base_link`` origin, wrenches of the nominal centre of mass.
+map. Poses and velocities speak of the ``base_link`` origin, wrenches of the nominal centre of
+mass.
 """
 
 from dataclasses import dataclass, field
@@ -149,7 +150,8 @@ class Wrench:
 
     def finite(self) -> bool:
         """Whether every component is a finite number."""
-        return bool(np.isfinite(self.force_body_n).all() and np.isfinite(self.torque_body_nm).all())
+        parts = self.force_body_n, self.torque_body_nm
+        return all(bool(np.isfinite(part).all()) for part in parts)
 
 
 # ---------------------------------------------------------------- commands
@@ -174,7 +176,7 @@ class CarrierCommand:
 
 @dataclass(frozen=True, eq=False, slots=True)
 class CarrierPlan:
-    """Planned axis positions over a horizon: ``time_s`` (h,), ``position_m`` and ``velocity_m_s`` (h, k)."""
+    """Planned axis positions over a horizon: ``time_s`` (h,), the others (h, k)."""
 
     stamp_s: float
     time_s: Array

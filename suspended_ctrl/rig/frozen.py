@@ -1,12 +1,11 @@
 """Arrays that cannot be written, for values that several parts share."""
 
-from collections.abc import Sequence
-
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 Array = NDArray[np.float64]
-ArrayLike = Array | Sequence[float] | Sequence[Sequence[float]]
+
+__all__ = ['Array', 'ArrayLike', 'frozen']
 
 
 def frozen(value: ArrayLike, *shape: int) -> Array:

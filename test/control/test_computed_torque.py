@@ -4,6 +4,7 @@ import control
 import numpy as np
 from numpy.testing import assert_allclose
 import pytest
+
 from suspended_ctrl.control.bandwidth import (
     BandwidthError,
     checked_bandwidth,
@@ -78,7 +79,7 @@ def test_attitude_error_decays_as_second_order(rig):
     angle, rate = 0.01, 0.05
     turn = np.array([0, 0, 0.4])
     state = (ZERO, ZERO, multiply(desired, exponential(np.array([0, 0, angle]))),
-             turn + [0, 0, rate])
+             turn + np.array([0, 0, rate]))
     point = ReferencePoint(ZERO, ZERO, ZERO, desired, turn, np.array([0, 0, 0.7]))
     _, angular = resulting(rig, inputs(rig, state, point))
     assert_allclose(angular, [0, 0, 0.7 - damping * rate - natural ** 2 * np.sin(angle)],

@@ -4,6 +4,7 @@ import numpy as np
 from numpy.testing import assert_allclose
 import pytest
 from scipy.integrate import solve_ivp
+
 from suspended_ctrl.control.controller import ControlSettings, WrenchController
 from suspended_ctrl.control.stop_path import BRAKE_M_S2, path_to_rest
 from suspended_ctrl.control.values import ControlInputs
@@ -59,13 +60,13 @@ def test_idle_asks_for_the_weight_and_no_more(rig):
 
 def test_live_without_reference_holds_the_pose_it_found(rig):
     driven = Driven(rig)
-    place = equilibrium(rig).position_map_m + [0.02, -0.01, 0.03]
+    place = equilibrium(rig).position_map_m + np.array([0.02, -0.01, 0.03])
     driven.step('ready', place)
     first = driven.step('live', place)
     assert first.following == 'hold'
     weight = loaded_body(rig).mass_kg * GRAVITY_M_S2
     assert_allclose(first.demand.vector()[:3], [0, 0, weight], atol=1e-9)
-    pushed = driven.step('live', place + [0.01, 0, 0])
+    pushed = driven.step('live', place + np.array([0.01, 0, 0]))
     assert pushed.demand.force_body_n[0] < -1.0
 
 
@@ -113,8 +114,8 @@ def test_a_stop_drops_the_path_for_good(rig):
 
 def test_way_to_rest_starts_where_it_is_and_ends_over_the_equilibrium(rig):
     goal = equilibrium(rig).position_map_m
-    start = ReferencePoint(goal + [0.3, 0.2, 0.1], np.array([1.5, 0, 0]), np.array([2.0, 0, 0]),
-                           LEVEL, ZERO, ZERO)
+    start = ReferencePoint(goal + np.array([0.3, 0.2, 0.1]), np.array([1.5, 0, 0]),
+                           np.array([2.0, 0, 0]), LEVEL, ZERO, ZERO)
     felt = PlatformState(10.0, start.position_map_m, start.velocity_map_m_s, LEVEL, ZERO)
     path = path_to_rest(start, felt, goal)
     first, last = path.at(10.0 + 1e-9), path.at(path.end_s)

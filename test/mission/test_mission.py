@@ -3,6 +3,7 @@
 import numpy as np
 from numpy.testing import assert_allclose
 import pytest
+
 from suspended_ctrl.mission.file import load_mission
 from suspended_ctrl.mission.player import MissionPlayer
 from suspended_ctrl.mission.timing import timed

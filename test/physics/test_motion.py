@@ -5,6 +5,7 @@ from numpy.testing import assert_allclose
 import pinocchio
 import pytest
 from scipy.integrate import solve_ivp
+
 from suspended_ctrl.physics.constants import GRAVITY_M_S2
 from suspended_ctrl.physics.equilibrium import anchor_at_zero, equilibrium
 from suspended_ctrl.physics.loaded_body import loaded_body
@@ -102,7 +103,8 @@ def test_elastic_pendulum_periods():
 
 def test_tether_pulls_only_and_damps_only_under_tension():
     still = np.zeros(3)
-    slack = hook_force(np.array([0, 0, -2.9]), np.array([0, 0, -9.0]), still, still, 3.0, 74.0, 1.5)
+    slack = hook_force(np.array([0, 0, -2.9]), np.array([0, 0, -9.0]), still, still, 3.0, 74.0,
+                       1.5)
     assert_allclose(slack, 0.0)
     recoiling = hook_force(np.array([0, 0, -3.01]), np.array([0, 0, 9.0]), still, still, 3.0, 74.0,
                            1.5)

@@ -6,6 +6,7 @@ import numpy as np
 from numpy.testing import assert_allclose
 import pytest
 from scipy.optimize import linprog
+
 from suspended_ctrl.physics.carrier import carrier_step
 from suspended_ctrl.physics.reach import Reach
 from suspended_ctrl.physics.rotor import lagged_speed, RotorModel
