@@ -34,12 +34,14 @@ from suspended_ctrl.review.messages.read import (
     read_rotors,
     read_safety_state,
     read_tether_load,
+    read_time,
     read_wrench,
 )
 from suspended_ctrl.review.messages.trajectory import (
     build_carrier_command,
     build_carrier_plan,
     build_reference,
+    checked_reference,
     read_carrier_command,
     read_carrier_plan,
     read_reference,
@@ -73,6 +75,7 @@ __all__ = [
     'build_tether_load',
     'build_text',
     'build_wrench',
+    'checked_reference',
     'read_carrier',
     'read_carrier_command',
     'read_carrier_plan',
@@ -90,5 +93,6 @@ __all__ = [
     'read_rotors',
     'read_safety_state',
     'read_tether_load',
+    'read_time',
     'read_wrench',
 ]

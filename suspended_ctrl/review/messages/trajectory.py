@@ -101,9 +101,34 @@ def read_reference(message: Any) -> Reference | None:
     """
     if not message.points:
         return None
-    if list(message.joint_names) != [BASE_LINK]:
-        raise MessageError(f'joint_names {list(message.joint_names)} is not [{BASE_LINK!r}]')
     rows = np.array([_point_row(point, k) for k, point in enumerate(message.points)])
+    return checked_reference(read_stamp(message), message.joint_names, rows)
+
+
+def checked_reference(stamp_s: float, joint_names: Sequence[str], rows: Array) -> Reference:
+    """
+    Reference from the numbers of a message.
+
+    Parameters
+    ----------
+    stamp_s : float
+    joint_names : sequence of str
+    rows : ndarray, shape (m, 20)
+        Of each point: time, position, quaternion (w, x, y, z), velocity, rate, acceleration, rate's
+        derivative; changed where a quaternion is slightly off.
+
+    Returns
+    -------
+    Reference
+
+    Raises
+    ------
+    MessageError
+        As ``read_reference``.
+
+    """
+    if list(joint_names) != [BASE_LINK]:
+        raise MessageError(f'joint_names {list(joint_names)} is not [{BASE_LINK!r}]')
     finite = np.isfinite(rows).all(axis=1)
     if not finite.all():
         raise MessageError(f'point {int(np.argmin(finite))} has a number that is not finite')
@@ -122,7 +147,7 @@ def read_reference(message: Any) -> Reference | None:
     off = np.abs(norm - 1.0) > UNIT_EXACT
     quaternion[off] /= norm[off, None]
     return Reference(
-        read_stamp(message), frozen(time_s), frozen(rows[:, 1:4]), frozen(rows[:, 8:11]),
+        stamp_s, frozen(time_s), frozen(rows[:, 1:4]), frozen(rows[:, 8:11]),
         frozen(rows[:, 14:17]), frozen(quaternion), frozen(rows[:, 11:14]), frozen(rows[:, 17:20]))
 
 
