@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from suspended_ctrl.estimation.settings import EstimatorSettings
-from suspended_ctrl.physics.constants import GRAVITY_M_S2
+from suspended_ctrl.rig.constants import GRAVITY_M_S2
 from suspended_ctrl.physics.rotation import (
     conjugate,
     exponential,
@@ -93,7 +93,7 @@ def align(settings: EstimatorSettings, stamps_s: Array, positions: Array, quater
 
 
 def check_imu(settings: EstimatorSettings, rate: Array, rates: Array, forces: Array) -> str:
-    """Say what is wrong with the units of the IMU of a rig that turns at ``rate``; else nothing."""
+    """Say what is wrong with the units of a resting IMU, the rig turning at ``rate``; or nothing."""
     if not rates.size:
         return ''
     force = float(np.linalg.norm(forces.mean(axis=0)))

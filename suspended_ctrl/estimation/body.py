@@ -5,7 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from suspended_ctrl.estimation.dynamics import BODY
-from suspended_ctrl.physics.constants import GRAVITY_M_S2
+from suspended_ctrl.rig.constants import GRAVITY_M_S2
 from suspended_ctrl.physics.rotor import RotorModel
 from suspended_ctrl.physics.values import Payload
 from suspended_ctrl.rig.frozen import Array, frozen

@@ -2,14 +2,14 @@
 Measurement update of the 24 errors, with a gate and a monitor of the stamps beside it.
 
 The monitor is the separate-bias estimator of Friedland (IEEE TAC 14(4), 1969): the innovations
-answer linearly to a constant offset of the pose stamps, through a sensitivity that is carried along
-with the state; the filter itself knows nothing of it.
+answer linearly to a constant offset of the pose stamps, through a sensitivity that is carried
+along with the state; the filter itself knows nothing of it.
 """
 
 from numba import types
 import numpy as np
 
-from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, OUT_VECTOR, VECTOR
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.rig.frozen import Array
 
 
@@ -21,8 +21,11 @@ def imu_residual(x: Array, s: Array, j: Array, rate: Array, force: Array, arm: A
 
     Parameters
     ----------
-    x, s, j : ndarray
-        State and its linearisation, see ``dynamics``.
+    x, j : ndarray
+        State and Jacobian of its accelerations, see ``dynamics``.
+    s : ndarray, shape (6,) or longer
+        Mean specific force and angular acceleration since the last sample: accelerometers
+        integrate, so that no motion between two samples is lost.
     rate, force : ndarray, shape (3,)
         Measured, in body axes.
     arm : ndarray, shape (3,)
@@ -60,6 +63,47 @@ def imu_residual(x: Array, s: Array, j: Array, rate: Array, force: Array, arm: A
         for k in range(3):
             h[3 + i, 9 + k] += x[10 + i] * arm[k] - 2.0 * arm[i] * x[10 + k]
         h[3 + i, 9 + i] += along
+
+
+@kernel(types.void(MATRIX, VECTOR, VECTOR, REAL, OUT_MATRIX, OUT_MATRIX))
+def imu_noise(r: Array, n: Array, sensor: Array, dt: float, noise: Array, common: Array) -> None:
+    """
+    Write the IMU's noise and what it has in common with the process noise.
+
+    The accelerometer feels the white force that has moved the platform since its last sample: its
+    mean over that time is in the innovation, and its integral in the error of the velocity.
+
+    Parameters
+    ----------
+    r : ndarray, shape (3, 3)
+        Body to map.
+    n : ndarray, shape (26,)
+        Densities, see ``covariance``.
+    sensor : ndarray, shape (6,)
+        Variances of gyroscope and accelerometer.
+    dt : float
+        Since the last sample, s, above zero.
+    noise : ndarray, shape (6, 6)
+        Out: covariance of the innovation's noise.
+    common : ndarray, shape (6, 24)
+        Out: covariance of the innovation's noise and the errors.
+
+    """
+    for i in range(6):
+        for k in range(6):
+            noise[i, k] = 0.0
+        noise[i, i] = sensor[i]
+        for k in range(24):
+            common[i, k] = 0.0
+    for i in range(3):
+        for k in range(3):
+            shared = r[0, i] * n[k] + r[1, i] * n[3 + k] + r[2, i] * n[6 + k]
+            common[3 + i, 6 + k] = shared
+            common[3 + i, k] = 0.5 * dt * shared
+    for i in range(3):
+        for k in range(3):
+            noise[3 + i, 3 + k] += (common[3 + i, 6] * r[0, k] + common[3 + i, 7] * r[1, k]
+                                    + common[3 + i, 8] * r[2, k]) / dt
 
 
 @kernel(types.void(VECTOR, VECTOR, VECTOR, VECTOR, OUT_MATRIX, OUT_VECTOR, OUT_VECTOR))
@@ -133,10 +177,10 @@ def pose_residual(x: Array, position: Array, quaternion: Array, arm: Array, h: A
     nu[5] = scale * e3
 
 
-@kernel(types.void(OUT_MATRIX, MATRIX, VECTOR, VECTOR, VECTOR, VECTOR, OUT_VECTOR, OUT_MATRIX,
-                   OUT_VECTOR))
-def correct(p: Array, h: Array, nu: Array, noise: Array, drift: Array, options: Array, lag: Array,
-            gain: Array, out: Array) -> None:
+@kernel(types.void(OUT_MATRIX, MATRIX, VECTOR, MATRIX, MATRIX, VECTOR, VECTOR, OUT_VECTOR,
+                   OUT_MATRIX, OUT_VECTOR))
+def correct(p: Array, h: Array, nu: Array, noise: Array, common: Array, drift: Array,
+            options: Array, lag: Array, gain: Array, out: Array) -> None:
     """
     Gate a measurement and absorb it.
 
@@ -147,8 +191,10 @@ def correct(p: Array, h: Array, nu: Array, noise: Array, drift: Array, options: 
     h : ndarray, shape (m, 24)
     nu : ndarray, shape (m,)
         Innovation.
-    noise : ndarray, shape (m,)
-        Variances of the measurement.
+    noise : ndarray, shape (m, m)
+        Covariance of the innovation's noise.
+    common : ndarray, shape (m, 24) or (0, 24)
+        Covariance of that noise and the errors; no rows where they have nothing in common.
     drift : ndarray, shape (m,)
         Direct answer of the innovation to an offset of the stamp; zeros where there is none.
     options : ndarray, shape (4,)
@@ -159,13 +205,13 @@ def correct(p: Array, h: Array, nu: Array, noise: Array, drift: Array, options: 
     gain : ndarray, shape (24, m)
         Out: the gain.
     out : ndarray, shape (29,)
-        Out: correction of the errors 0:24, squared distance of the innovation 24, of the innovation
-        with the offset's part taken out 25, absorbed (1 or 0) 26, the monitor's offset 27 and
-        variance 28.
+        Out: correction of the errors 0:24, squared distance of the innovation 24, of the
+        innovation with the offset's part taken out 25, absorbed (1 or 0) 26, the monitor's offset
+        27 and variance 28.
 
     """
     m = h.shape[0]
-    # g = p h', as rows.
+    # g = p h' and what is in common, as rows.
     g = np.zeros((m, 24))
     for k in range(m):
         for i in range(24):
@@ -173,6 +219,11 @@ def correct(p: Array, h: Array, nu: Array, noise: Array, drift: Array, options: 
             if a != 0.0:
                 for n in range(24):
                     g[k, n] += a * p[i, n]
+    shared = common.shape[0] == m
+    if shared:
+        for k in range(m):
+            for n in range(24):
+                g[k, n] += common[k, n]
     low = np.zeros((m, m))
     y = np.empty(m)
     z = np.empty(m)
@@ -182,9 +233,12 @@ def correct(p: Array, h: Array, nu: Array, noise: Array, drift: Array, options: 
             total -= h[k, i] * lag[i]
         z[k] = total
         for i in range(k + 1):
-            total = noise[k] if i == k else 0.0
+            total = noise[k, i]
             for n in range(24):
                 total += h[i, n] * g[k, n]
+            if shared:
+                for n in range(24):
+                    total += h[k, n] * common[i, n]
             for n in range(i):
                 total -= low[k, n] * low[i, n]
             if i == k:

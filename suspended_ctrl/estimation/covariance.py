@@ -5,9 +5,10 @@ Errors and body as in ``dynamics``. Process noise: white force and torque, rando
 disturbances and of the biases. Its discretisation is Van Loan's (IEEE TAC 23(3), 1978) for the
 chains position-velocity-force and attitude-rate-torque, exact when nothing else couples them.
 
-Densities ``n`` (20): white force 0:3 (map axes, N^2 s), walk of the disturbance force 3:6 (N^2/s),
-walk of the gyroscope bias 6 (rad^2/s^3), of the accelerometer bias 7 (m^2/s^5), walk of the
-disturbance torque 8:11 (body axes, (N m)^2/s), white angular acceleration 11:20 (3x3, rad^2/s^3).
+Densities ``n`` (26): white acceleration 0:9 (3x3, map axes, m^2/s^3), white angular acceleration
+9:18 (3x3, body axes, rad^2/s^3), walk of the disturbance force 18:21 (map axes, N^2/s), of the
+disturbance torque 21:24 (body axes, (N m)^2/s), of the gyroscope bias 24 (rad^2/s^3) and of the
+accelerometer bias 25 (m^2/s^5).
 """
 
 from numba import types
@@ -16,7 +17,13 @@ import numpy as np
 from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.rig.frozen import Array
 
-DENSITIES = 20
+DENSITIES = 26
+
+
+@kernel(types.void(OUT_MATRIX, types.int64, types.int64, REAL))
+def _add_twice(p: Array, i: int, k: int, a: float) -> None:
+    p[i, k] += a
+    p[k, i] += a
 
 
 @kernel(types.void(OUT_MATRIX, VECTOR, VECTOR, REAL))
@@ -25,41 +32,32 @@ def add_noise(p: Array, n: Array, c: Array, dt: float) -> None:
     dt2 = dt * dt
     mass = c[0]
     for i in range(3):
-        white = n[i] / (mass * mass)
-        walk = n[3 + i]
+        walk = n[18 + i]
         fall = walk / (mass * mass)
-        p[i, i] += dt2 * dt * (white / 3.0 + dt2 * fall / 20.0)
-        p[6 + i, 6 + i] += dt * (white + dt2 * fall / 3.0)
+        p[i, i] += dt2 * dt2 * dt * fall / 20.0
+        p[6 + i, 6 + i] += dt2 * dt * fall / 3.0
         p[18 + i, 18 + i] += dt * walk
-        a = dt2 * (0.5 * white + dt2 * fall / 8.0)
-        p[i, 6 + i] += a
-        p[6 + i, i] += a
-        a = dt2 * dt * walk / (6.0 * mass)
-        p[i, 18 + i] += a
-        p[18 + i, i] += a
-        a = 0.5 * dt2 * walk / mass
-        p[6 + i, 18 + i] += a
-        p[18 + i, 6 + i] += a
-        p[12 + i, 12 + i] += dt * n[6]
-        p[15 + i, 15 + i] += dt * n[7]
-        p[21 + i, 21 + i] += dt * n[8 + i]
+        _add_twice(p, i, 6 + i, dt2 * dt2 * fall / 8.0)
+        _add_twice(p, i, 18 + i, dt2 * dt * walk / (6.0 * mass))
+        _add_twice(p, 6 + i, 18 + i, 0.5 * dt2 * walk / mass)
+        p[12 + i, 12 + i] += dt * n[24]
+        p[15 + i, 15 + i] += dt * n[25]
+        p[21 + i, 21 + i] += dt * n[21 + i]
         for k in range(3):
-            white = n[11 + 3 * i + k]
-            walk = c[10 + 3 * i + k] * n[8 + k]
+            white = n[3 * i + k]
+            p[i, k] += dt2 * dt * white / 3.0
+            p[6 + i, 6 + k] += dt * white
+            _add_twice(p, i, 6 + k, 0.5 * dt2 * white)
+            white = n[9 + 3 * i + k]
+            walk = c[10 + 3 * i + k] * n[21 + k]
             fall = 0.0
             for m in range(3):
-                fall += c[10 + 3 * i + m] * n[8 + m] * c[10 + 3 * k + m]
+                fall += c[10 + 3 * i + m] * n[21 + m] * c[10 + 3 * k + m]
             p[3 + i, 3 + k] += dt2 * dt * (white / 3.0 + dt2 * fall / 20.0)
             p[9 + i, 9 + k] += dt * (white + dt2 * fall / 3.0)
-            a = dt2 * (0.5 * white + dt2 * fall / 8.0)
-            p[3 + i, 9 + k] += a
-            p[9 + k, 3 + i] += a
-            a = dt2 * dt * walk / 6.0
-            p[3 + i, 21 + k] += a
-            p[21 + k, 3 + i] += a
-            a = 0.5 * dt2 * walk
-            p[9 + i, 21 + k] += a
-            p[21 + k, 9 + i] += a
+            _add_twice(p, 3 + i, 9 + k, dt2 * (0.5 * white + dt2 * fall / 8.0))
+            _add_twice(p, 3 + i, 21 + k, dt2 * dt * walk / 6.0)
+            _add_twice(p, 9 + i, 21 + k, 0.5 * dt2 * walk)
 
 
 @kernel(types.void(MATRIX, MATRIX, VECTOR, VECTOR, REAL, OUT_MATRIX, OUT_MATRIX))

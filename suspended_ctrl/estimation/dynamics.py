@@ -10,9 +10,9 @@ disturbance torque 22:25 (body).
 Errors (24): position 0:3, attitude 3:6 (body rotation vector), velocity 6:9, rate 9:12, gyroscope
 bias 12:15, accelerometer bias 15:18, disturbance force 18:21, disturbance torque 21:24.
 
-Inputs ``u`` (24): anchor 0:3 and its velocity 3:6 (map), rotor wrench 6:12 (body, about the centre
-of mass), rotor angular momentum 12:15, rate of the wrench 15:21, stamps of carrier and rotors 21:23,
-what a load cell adds to the tension 23.
+Inputs ``u`` (24): anchor 0:3 and its velocity 3:6 (map), rotor wrench 6:12 (body, about the
+centre of mass), rotor angular momentum 12:15, rate of the wrench 15:21, stamps of carrier and
+rotors 21:23, what a load cell adds to the tension 23.
 
 Body ``c`` (28): mass 0, inertia 1:10, its inverse 10:19, hook from the centre of mass 19:22, rest
 length 22, stiffness 23, damping 24, gravity 25, longest extrapolation of rotors and carrier 26:28.
@@ -28,6 +28,7 @@ STATES = 25
 ERRORS = 24
 INPUTS = 24
 BODY = 28
+FELT = 7
 
 
 @kernel(types.void(OUT_VECTOR, REAL, REAL, REAL))
@@ -240,8 +241,8 @@ def evaluate(x: Array, u: Array, c: Array, t: float, s: Array) -> None:
     _model(x, u, c, t, s, np.empty((6, 24)), False)
 
 
-@kernel(types.void(OUT_VECTOR, VECTOR, VECTOR, REAL, REAL))
-def move(x: Array, u: Array, c: Array, t: float, dt: float) -> None:
+@kernel(types.void(OUT_VECTOR, VECTOR, VECTOR, REAL, REAL, OUT_VECTOR))
+def move(x: Array, u: Array, c: Array, t: float, dt: float, felt: Array) -> None:
     """
     Move the state from ``t`` by ``dt`` seconds in place, by the midpoint rule.
 
@@ -251,6 +252,8 @@ def move(x: Array, u: Array, c: Array, t: float, dt: float) -> None:
         State (changed), inputs, body; see the module.
     t, dt : float
         Stamp of the state and length of the step, s.
+    felt : ndarray, shape (7,)
+        Specific force and angular acceleration times ``dt`` are added to 0:6, ``dt`` to 6.
 
     """
     s = np.empty(7)
@@ -278,6 +281,9 @@ def move(x: Array, u: Array, c: Array, t: float, dt: float) -> None:
         x[i] += dt * (x[3 + i] + half * a)
         x[3 + i] += dt * a
         x[10 + i] += dt * s[3 + i]
+        felt[i] += dt * s[i]
+        felt[3 + i] += dt * s[3 + i]
+    felt[6] += dt
 
 
 @kernel(types.void(OUT_VECTOR, VECTOR))

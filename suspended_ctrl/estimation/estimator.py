@@ -1,7 +1,8 @@
 """
 Where the platform is: stamped samples in, in any order, an estimate out.
 
-The estimate speaks of the newest accepted pose's stamp while poses flow, else of the newest sample.
+The estimate speaks of the newest accepted pose's stamp while poses flow, else of the newest
+sample.
 """
 
 from dataclasses import dataclass, field
@@ -37,7 +38,7 @@ from suspended_ctrl.physics.values import (
     Sample,
     TetherLoadSample,
 )
-from suspended_ctrl.rig.frozen import Array
+from suspended_ctrl.rig.frozen import Array, ArrayLike
 from suspended_ctrl.rig.rig import Rig
 
 # Poses count as stopped after so many periods without one.
@@ -98,9 +99,13 @@ class Estimator:
         self.alignment: Alignment | None = None
         self.message = ''
         sensors = rig.sensors if rig else None
-        self._marker_back = conjugate(sensors.pose.quaternion_wxyz) if sensors else None
         imu = sensors.imu if sensors else None
-        self._imu_rotation = matrix(imu.quaternion_wxyz) if imu else np.eye(3)
+        self._marker_back = _unless_identity(sensors.pose.quaternion_wxyz if sensors else None)
+        self._imu_rotation = _unless_identity(imu.quaternion_wxyz if imu else None)
+        if self._marker_back is not None:
+            self._marker_back = conjugate(self._marker_back)
+        if self._imu_rotation is not None:
+            self._imu_rotation = matrix(self._imu_rotation)
         self._imu_usable = True
         body = build_body(rig, Payload())
         self._horizon = Horizon(settings, body, self._loaded, self.guard.verdict)
@@ -112,7 +117,7 @@ class Estimator:
 
     # ------------------------------------------------------------ samples
 
-    def imu(self, t: float, rate: Array, force: Array) -> bool:
+    def imu(self, t: float, rate: ArrayLike, force: ArrayLike) -> bool:
         """
         Take a sample of the IMU.
 
@@ -120,7 +125,7 @@ class Estimator:
         ----------
         t : float
             Stamp, s.
-        rate, force : ndarray, shape (3,)
+        rate, force : array_like, shape (3,)
             rad/s and m/s^2 (specific force), sensor axes.
 
         Returns
@@ -129,11 +134,14 @@ class Estimator:
             Whether it was taken; ``guard.refused`` counts why not.
 
         """
-        if not self._imu_usable or not self.guard.numbers(IMU, t, rate, force):
+        sample = self.guard.vectors(IMU, t, rate, 3, force, 3) if self._imu_usable else None
+        if sample is None:
             return False
-        return self._push(t, IMU, (self._imu_rotation @ rate, self._imu_rotation @ force))
+        if self._imu_rotation is not None:
+            sample = self._imu_rotation @ sample[0], self._imu_rotation @ sample[1]
+        return self._push(t, IMU, sample)
 
-    def pose(self, t: float, position: Array, quaternion_wxyz: Array) -> bool:
+    def pose(self, t: float, position: ArrayLike, quaternion_wxyz: ArrayLike) -> bool:
         """
         Take a pose of the marker body in map.
 
@@ -141,8 +149,8 @@ class Estimator:
         ----------
         t : float
             Stamp, s.
-        position : ndarray, shape (3,)
-        quaternion_wxyz : ndarray, shape (4,)
+        position : array_like, shape (3,)
+        quaternion_wxyz : array_like, shape (4,)
 
         Returns
         -------
@@ -151,37 +159,43 @@ class Estimator:
 
         """
         guard = self.guard
-        if not (guard.numbers(POSE, t, position, quaternion_wxyz) and guard.unit(quaternion_wxyz)):
+        sample = guard.vectors(POSE, t, position, 3, quaternion_wxyz, 4)
+        if sample is None or not guard.unit(sample[1]) or guard.frozen_pose(*sample):
             return False
-        if guard.frozen_pose(position, quaternion_wxyz):
-            return False
-        attitude = normalised(quaternion_wxyz)
+        place, attitude = sample[0], normalised(sample[1])
         if self._marker_back is not None:
             attitude = multiply(attitude, self._marker_back)
-        return self._push(t, POSE, (np.array(position, dtype=np.float64), attitude))
+        return self._push(t, POSE, (place, attitude))
 
-    def rotors(self, t: float, speed: Array) -> bool:
+    def rotors(self, t: float, speed: ArrayLike) -> bool:
         """Take measured rotor speeds, rad/s, in the rig's order; returns whether taken."""
-        if self.rig is None or not self.guard.numbers(ROTORS, t, speed):
+        if self.rig is None:
             return False
-        return self._push(t, ROTORS, np.array(speed, dtype=np.float64))
+        sample = self.guard.vectors(ROTORS, t, speed, self.rig.rotors.count)
+        return sample is not None and self._push(t, ROTORS, sample[0])
 
-    def carrier(self, t: float, position: Array, velocity: Array | None = None) -> bool:
+    def carrier(self, t: float, position: ArrayLike, velocity: ArrayLike = ()) -> bool:
         """Take measured axis positions, m (their velocity is not used); returns whether taken."""
-        if self.rig is None or not self.guard.numbers(CARRIER, t, position):
+        if self.rig is None:
             return False
-        return self._push(t, CARRIER, self.rig.carrier.anchor_map(position))
+        sample = self.guard.vectors(CARRIER, t, position, len(self.rig.carrier.axes))
+        return sample is not None and self._push(
+            t, CARRIER, self.rig.carrier.anchor_map(sample[0]))
 
     def tether_load(self, t: float, tension: float) -> bool:
         """Take a measured tension, N; returns whether taken."""
-        if self.rig is None or not self.guard.numbers(TETHER, t, tension):
+        if self.rig is None:
             return False
-        return self._push(t, TETHER, tension)
+        sample = self.guard.vectors(TETHER, t, (tension,), 1)
+        return sample is not None and self._push(t, TETHER, tension)
 
     def payload(self, event: PayloadEvent) -> bool:
         """Take what hangs on the platform from ``event.stamp_s`` on; returns whether taken."""
-        if self.rig is None or not self.guard.numbers(PAYLOAD, event.stamp_s, event.mass_kg,
-                                                      event.position_m):
+        if self.rig is None:
+            return False
+        sample = self.guard.vectors(PAYLOAD, event.stamp_s, (event.mass_kg,), 1,
+                                    event.position_m, 3)
+        if sample is None or event.mass_kg < 0.0:
             return False
         return self._push(event.stamp_s, PAYLOAD, event)
 
@@ -337,6 +351,10 @@ class Estimator:
             'stamp_offset_sigma_s': state.offset[1] ** 0.5,
             **{f'refused.{name}': float(count) for name, count in guard.refused.items()},
         }
+
+
+def _unless_identity(quaternion: Array | None) -> Array | None:
+    return None if quaternion is None or abs(quaternion[0]) == 1.0 else quaternion
 
 
 def _blank() -> Estimate:

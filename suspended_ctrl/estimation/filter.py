@@ -1,17 +1,19 @@
 """The error-state filter: one state, moved forward by stamps, corrected by what is measured."""
 
 from dataclasses import dataclass
+import math
 
 import numpy as np
 from scipy.stats import chi2
 
 from suspended_ctrl.estimation.body import BodyModel
-from suspended_ctrl.estimation.correction import correct, imu_residual, pose_residual
+from suspended_ctrl.estimation.correction import correct, imu_noise, imu_residual, pose_residual
 from suspended_ctrl.estimation.covariance import DENSITIES, spread
 from suspended_ctrl.estimation.dynamics import (
     attitude_matrix,
     ERRORS,
     evaluate,
+    FELT,
     inject,
     INPUTS,
     linearise,
@@ -24,6 +26,8 @@ from suspended_ctrl.rig.frozen import Array
 
 # Longest step of the midpoint rule and of the covariance, s.
 STEP_MAX_S = 0.005
+# A longer time without IMU is a gap, over which its next sample says nothing, s.
+IMU_GAP_S = 0.012
 # One standard deviation of the stamps' offset that the monitor starts from, s.
 OFFSET_SPREAD_S = 0.010
 OFFSET_WALK_S_S05 = 0.0005
@@ -70,11 +74,12 @@ class ErrorStateFilter:
         self.body = body
         self.t = float('nan')
         count = body.rotors.rotors.count if body.rotors else 0
-        self.flat = np.zeros(STATES + INPUTS + ERRORS + 2 * count)
+        self.flat = np.zeros(STATES + INPUTS + ERRORS + FELT + 2 * count)
         self.x = self.flat[:STATES]
         self.u = self.flat[STATES:STATES + INPUTS]
         self._lag = self.flat[STATES + INPUTS:STATES + INPUTS + ERRORS]
-        self._speeds = self.flat[STATES + INPUTS + ERRORS:]
+        self._felt = self.flat[STATES + INPUTS + ERRORS:STATES + INPUTS + ERRORS + FELT]
+        self._speeds = self.flat[STATES + INPUTS + ERRORS + FELT:]
         self.x[6] = 1.0
         self.u[21:23] = -np.inf
         self.p = np.zeros((ERRORS, ERRORS))
@@ -95,13 +100,17 @@ class ErrorStateFilter:
         self.imu_gain = np.zeros((ERRORS, 6))
         self._options = np.zeros(4)
         self._gate = float(chi2.ppf(settings.gate_probability, 6))
-        self._pose_noise = np.repeat(
-            [settings.position_noise_m**2, settings.attitude_noise_rad**2], 3)
-        self._imu_noise = np.repeat(
+        self._pose_noise = np.diag(np.repeat(
+            [settings.position_noise_m**2, settings.attitude_noise_rad**2], 3))
+        self._imu_variance = np.repeat(
             [settings.rate_noise_rad_s**2, settings.force_noise_m_s2**2], 3)
+        self._imu_noise = np.diag(self._imu_variance)
+        self._common = np.zeros((6, ERRORS))
+        self._nothing = np.zeros((0, ERRORS))
         self._rotor_gains = tracking_gains(settings.rotor_index)
         self._carrier_gains = tracking_gains(settings.carrier_index)
         self._noise = np.zeros(DENSITIES)
+        self._white = np.zeros(18)
         self.set_body(body)
 
     # ------------------------------------------------------------ the model
@@ -124,13 +133,15 @@ class ErrorStateFilter:
         self.body = body
         set_ = self.settings
         inverse = body.vector[10:19].reshape(3, 3)
-        self._noise[:3] = set_.force_white_n_s05**2
-        self._noise[3:6] = set_.force_walk_n_s05**2
-        self._noise[6] = set_.rate_bias_walk**2
-        self._noise[7] = set_.force_bias_walk**2
-        self._noise[8:11] = set_.torque_walk_nm_s05**2
-        self._noise[11:20] = (set_.torque_white_nm_s05**2 * inverse @ inverse.T).ravel()
-        if not np.isnan(self.t):
+        white = self._white
+        white[:9] = (set_.force_white_n_s05**2 / body.vector[0]**2 * np.eye(3)).ravel()
+        white[9:] = (set_.torque_white_nm_s05**2 * inverse @ inverse.T).ravel()
+        self._noise[:18] = white
+        self._noise[18:21] = set_.force_walk_n_s05**2
+        self._noise[21:24] = set_.torque_walk_nm_s05**2
+        self._noise[24] = set_.rate_bias_walk**2
+        self._noise[25] = set_.force_bias_walk**2
+        if not math.isnan(self.t):
             self._linearise()
 
     def _linearise(self) -> None:
@@ -153,7 +164,7 @@ class ErrorStateFilter:
             dt = left if left <= STEP_MAX_S else left / np.ceil(left / STEP_MAX_S)
             spread(self.p, self._lag, self._r, self._j, self._s, self.x[10:13], self.body.vector,
                    dt, self._noise, self._work)
-            move(self.x, self.u, self.body.vector, self.t, dt)
+            move(self.x, self.u, self.body.vector, self.t, dt, self._felt)
             self.t = t if dt == left else self.t + dt
             self._linearise()
 
@@ -162,7 +173,7 @@ class ErrorStateFilter:
         while t > self.t:
             left = t - self.t
             dt = left if left <= STEP_MAX_S else left / np.ceil(left / STEP_MAX_S)
-            move(self.x, self.u, self.body.vector, self.t, dt)
+            move(self.x, self.u, self.body.vector, self.t, dt, self._felt)
             self.t = t if dt == left else self.t + dt
 
     def foresee(self, t: float, samples: int) -> Array:
@@ -189,27 +200,42 @@ class ErrorStateFilter:
             imu_residual(self.x, self._s, self._j, self.x[10:13], self._s[:3],
                          self.body.imu_arm_m, self._h, self._nu)
             options = np.array([np.inf, 0.0, 0.0, 0.0])
-            correct(p, self._h, self._still, self._imu_noise / samples, self._still, options, lag,
-                    np.empty((ERRORS, 6)), self._out)
+            # What the model's white force adds is known from them about as well as they are.
+            correct(p, self._h, self._still, np.diag(self._imu_variance / samples), self._nothing,
+                    self._still, options, lag, np.empty((ERRORS, 6)), self._out)
         return p
 
     # ------------------------------------------------------------ samples
 
     def imu(self, rate: Array, force: Array) -> None:
         """Absorb a sample of the IMU (body axes) at the present stamp."""
+        dt = self._mean()
         imu_residual(self.x, self._s, self._j, rate, force, self.body.imu_arm_m, self._h, self._nu)
         options = self._options
         options[0] = np.inf
         options[1], options[2] = self.offset
         options[3] = 1.0
-        correct(self.p, self._h, self._nu, self._imu_noise, self._still, options, self._lag,
-                self.imu_gain, self._out)
+        imu_noise(self._r, self._noise, self._imu_variance, dt, self._imu_noise, self._common)
+        correct(self.p, self._h, self._nu, self._imu_noise, self._common, self._still, options,
+                self._lag, self.imu_gain, self._out)
         self.offset = (float(self._out[27]), float(self._out[28]))
         inject(self.x, self._out)
 
+    def _mean(self) -> float:
+        """Put the mean since the last sample of the IMU in ``_s``; the time it speaks for, s."""
+        dt = float(self._felt[6])
+        if 0.0 < dt < IMU_GAP_S:
+            self._s[:6] = self._felt[:6] / dt
+        else:
+            dt = STEP_MAX_S
+        self._felt[:] = 0.0
+        return dt
+
     def imu_while_coasting(self, rate: Array, force: Array) -> None:
         """Correct the state by a sample of the IMU with the last gain."""
-        evaluate(self.x, self.u, self.body.vector, self.t, self._s)
+        if not 0.0 < self._felt[6] < IMU_GAP_S:
+            evaluate(self.x, self.u, self.body.vector, self.t, self._s)
+        self._mean()
         imu_residual(self.x, self._s, self._j, rate, force, self.body.imu_arm_m, self._h, self._nu)
         inject(self.x, self.imu_gain @ self._nu)
 
@@ -231,7 +257,7 @@ class ErrorStateFilter:
 
         """
         variance = self.offset[1]
-        if not np.isnan(self.accepted_s):
+        if not math.isnan(self.accepted_s):
             variance += OFFSET_WALK_S_S05**2 * max(self.t - self.accepted_s, 0.0)
         pose_residual(self.x, position, quaternion, self.body.pose_arm_m, self._h, self._nu,
                       self._drift)
@@ -240,18 +266,18 @@ class ErrorStateFilter:
         options[1] = self.offset[0]
         options[2] = variance
         options[3] = 1.0
-        correct(self.p, self._h, self._nu, self._pose_noise, self._drift, options, self._lag,
-                self._gain, self._out)
+        correct(self.p, self._h, self._nu, self._pose_noise, self._nothing, self._drift, options,
+                self._lag, self._gain, self._out)
         self.nis = float(self._out[24])
         if self._out[26] == 0.0:
-            if np.isnan(self.refused_since_s):
+            if math.isnan(self.refused_since_s):
                 self.refused_since_s = self.t
             if self.t - self.refused_since_s < self.settings.recovery_s:
                 return False
             self._open()
             options[0] = np.inf
-            correct(self.p, self._h, self._nu, self._pose_noise, self._drift, options, self._lag,
-                    self._gain, self._out)
+            correct(self.p, self._h, self._nu, self._pose_noise, self._nothing, self._drift,
+                    options, self._lag, self._gain, self._out)
         self.offset = (float(self._out[27]), float(self._out[28]))
         inject(self.x, self._out)
         self.accepted_s = self.t
@@ -287,9 +313,12 @@ class ErrorStateFilter:
             track(self._speeds, speed, age, *self._rotor_gains)
         self.u[22] = t
         rotors = model.rotors
+        self._noise[:18] = self._white
+        noise = self.settings.rotor_noise_fraction * math.sqrt(min(age, 0.1))
         rotor_inputs(self._speeds, rotors.curve_speed_rad_s, rotors.curve_thrust_n, model.axis,
                      model.arm, rotors.torque_coefficient_nm_s2, rotors.spin,
-                     rotors.inertia_kg_m2, min(age, 0.02), self.u)
+                     rotors.inertia_kg_m2, min(age, 0.02), noise, self._r, self.body.vector,
+                     self.u, self._noise)
 
     def anchor(self, t: float, position: Array) -> None:
         """Take the measured anchor (map) as input from ``t`` on."""

@@ -1,12 +1,14 @@
 """What is refused before it reaches the filter, and how often."""
 
 from collections import Counter
+import math
 
 import numpy as np
 
 from suspended_ctrl.estimation.settings import EstimatorSettings
 from suspended_ctrl.estimation.timeline import KIND_NAMES, POSE
-from suspended_ctrl.rig.frozen import Array
+from suspended_ctrl.physics.kernel import kernel, REAL, TRUTH, VECTOR
+from suspended_ctrl.rig.frozen import Array, ArrayLike
 
 # A quaternion off unit norm by more was not made by rounding.
 NORM_SLACK = 1e-3
@@ -16,6 +18,18 @@ AHEAD_MAX_S = 0.5
 JUMP_SAMPLES = 20
 # Poses equal to the last bit so many times in a row are a frozen source.
 FROZEN_POSES = 3
+
+
+@kernel(TRUTH(REAL, VECTOR, VECTOR))
+def all_finite(t: float, a: Array, b: Array) -> bool:
+    """Whether a stamp and two vectors have no inf and no nan."""
+    # Zero times anything finite is zero, times inf or nan it is nan.
+    total = 0.0 * t
+    for value in a:
+        total += 0.0 * value
+    for value in b:
+        total += 0.0 * value
+    return total == 0.0
 
 
 class Guard:
@@ -42,10 +56,10 @@ class Guard:
     def __init__(self, settings: EstimatorSettings) -> None:
         self._history_s = settings.history_s
         self.refused: Counter[str] = Counter()
-        self.newest_s = -np.inf
-        self.offered = -np.inf
+        self.newest_s = -math.inf
+        self.offered = -math.inf
         self._wrong_time = 0
-        self._pose: tuple[float, ...] | None = None
+        self._pose: tuple[bytes, bytes] | None = None
         self.repeats = 0
         self._verdicts: dict[float, bool] = {}
         self.gated = 0
@@ -56,21 +70,44 @@ class Guard:
         self.refused[f'{KIND_NAMES[kind]}.{reason}'] += 1
         return False
 
-    def numbers(self, kind: int, t: float, first: Array | float,
-                second: Array | float = 0.0) -> bool:
-        """Whether the stamp and every component are finite numbers."""
-        total = t + np.sum(first) + np.sum(second)
-        # A sum is finite if and only if its terms are, short of overflow.
-        return bool(np.isfinite(total)) or self.count(kind, 'not_finite')
+    def vectors(self, kind: int, t: float, first: ArrayLike, size: int,
+                second: ArrayLike = (), second_size: int = 0) -> tuple[Array, Array] | None:
+        """
+        Copies of a sample's one or two vectors, or None if it is not what it should be.
+
+        Parameters
+        ----------
+        kind : int
+        t : float
+        first, second : array_like
+        size, second_size : int
+            Lengths that they must have.
+
+        Returns
+        -------
+        tuple of ndarray, or None
+            None for a wrong length and where the stamp or a component is not finite.
+
+        """
+        a = np.array(first, dtype=np.float64)
+        b = np.array(second, dtype=np.float64)
+        if a.shape != (size,) or b.shape != (second_size,):
+            self.count(kind, 'wrong_size')
+            return None
+        if not all_finite(t, a, b):
+            self.count(kind, 'not_finite')
+            return None
+        return a, b
 
     def unit(self, quaternion: Array) -> bool:
         """Whether a quaternion has unit norm."""
-        square = float(quaternion @ quaternion)
+        w, x, y, z = quaternion.tolist()
+        square = w * w + x * x + y * y + z * z
         return abs(square - 1.0) <= 2.0 * NORM_SLACK or self.count(POSE, 'not_unit')
 
     def frozen_pose(self, position: Array, quaternion: Array) -> bool:
         """Whether a pose repeats the one before to the last bit, which no live source does."""
-        pose = (*position.tolist(), *quaternion.tolist())
+        pose = (position.tobytes(), quaternion.tobytes())
         if pose != self._pose:
             self._pose = pose
             self.repeats = 0
@@ -81,12 +118,13 @@ class Guard:
 
     def stamp(self, kind: int, t: float, oldest_s: float) -> bool:
         """Whether a stamp is on the clock of the others and not older than ``oldest_s``."""
-        if t <= oldest_s or (t > self.newest_s + AHEAD_MAX_S and np.isfinite(self.newest_s)):
+        if t <= oldest_s or t > self.newest_s + AHEAD_MAX_S > -math.inf:
             self._wrong_time += 1
             self.offered = t
             return self.count(kind, 'too_late' if t <= oldest_s else 'too_early')
         self._wrong_time = 0
-        self.newest_s = max(self.newest_s, t)
+        if t > self.newest_s:
+            self.newest_s = t
         return True
 
     @property

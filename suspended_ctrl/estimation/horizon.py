@@ -1,8 +1,8 @@
 """
 The filter at a delayed horizon, and the samples around it.
 
-Samples up to the horizon are absorbed in the order of their stamps; later ones wait. One that comes
-too late for that makes the filter go back to a snapshot and come again.
+Samples up to the horizon are absorbed in the order of their stamps; later ones wait. One that
+comes too late for that makes the filter go back to a snapshot and come again.
 """
 
 from collections.abc import Callable

@@ -56,13 +56,15 @@ def track(z: Array, measured: Array, dt: float, alpha: float, beta: float) -> No
         z[n + i] += beta * rest / dt
 
 
-@kernel(types.void(VECTOR, MATRIX, MATRIX, MATRIX, MATRIX, VECTOR, VECTOR, VECTOR, REAL,
-                   OUT_VECTOR))
+@kernel(types.void(VECTOR, MATRIX, MATRIX, MATRIX, MATRIX, VECTOR, VECTOR, VECTOR, REAL, REAL,
+                   MATRIX, VECTOR, OUT_VECTOR, OUT_VECTOR))
 def rotor_inputs(z: Array, curve_speed: Array, curve_thrust: Array, axis: Array, arm: Array,
                  torque_coefficient: Array, spin: Array, inertia: Array, ahead: float,
-                 u: Array) -> None:
+                 noise: float, r: Array, c: Array, u: Array, n: Array) -> None:
     """
     Write the rotors' wrench, its rate and their angular momentum into the inputs.
+
+    Noise of the speeds is noise of the wrench: white, of twice its fraction of each thrust.
 
     Parameters
     ----------
@@ -72,15 +74,24 @@ def rotor_inputs(z: Array, curve_speed: Array, curve_thrust: Array, axis: Array,
         As in ``physics.rotor``.
     ahead : float
         The wrench's rate is the mean over this time, s.
+    noise : float
+        Root density of the speeds' noise, as a fraction of the speed, s^0.5.
+    r : ndarray, shape (3, 3)
+        Body to map.
+    c : ndarray, shape (28,)
+        Body, see ``dynamics``.
     u : ndarray, shape (24,)
         Inputs, see ``dynamics``; 6:21 are written.
+    n : ndarray, shape (26,)
+        Densities, see ``covariance``; 0:18 get the noise's part added.
 
     """
-    n = z.shape[0] // 2
+    count = z.shape[0] // 2
     still = np.zeros(3)
-    speed = z[:n]
-    rate = z[n:]
-    now = _wrench(_thrust(speed, curve_speed, curve_thrust), speed, rate, axis, arm,
+    speed = z[:count]
+    rate = z[count:]
+    thrust = _thrust(speed, curve_speed, curve_thrust)
+    now = _wrench(thrust, speed, rate, axis, arm,
                   torque_coefficient, spin, inertia, still)
     later = speed + ahead * rate
     then = _wrench(_thrust(later, curve_speed, curve_thrust), later, rate, axis, arm,
@@ -90,5 +101,19 @@ def rotor_inputs(z: Array, curve_speed: Array, curve_thrust: Array, axis: Array,
         u[15 + i] = (then[i] - now[i]) / ahead
     for i in range(3):
         u[12 + i] = 0.0
-        for k in range(n):
+        for k in range(count):
             u[12 + i] += spin[k] * inertia[k] * speed[k] * axis[k, i]
+    push = np.empty(3)
+    twist = np.empty(3)
+    for k in range(count):
+        spread = 2.0 * noise * thrust[k]
+        for i in range(3):
+            push[i] = 0.0
+            twist[i] = 0.0
+            for m in range(3):
+                push[i] += r[i, m] * axis[k, m] * spread / c[0]
+                twist[i] += c[10 + 3 * i + m] * arm[k, m] * spread
+        for i in range(3):
+            for m in range(3):
+                n[3 * i + m] += push[i] * push[m]
+                n[9 + 3 * i + m] += twist[i] * twist[m]

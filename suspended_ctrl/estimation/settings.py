@@ -50,14 +50,14 @@ class EstimatorSettings:
     rate_bias_rad_s: float = 0.01
     force_bias_m_s2: float = 0.1
     pose_period_s: float = 0.005
-    force_white_n_s05: float = 0.02
+    force_white_n_s05: float = 0.01
     torque_white_nm_s05: float = 0.004
-    force_walk_n_s05: float = 2.0
+    force_walk_n_s05: float = 1.2
     torque_walk_nm_s05: float = 0.3
     rate_bias_walk: float = 1e-5
     force_bias_walk: float = 1e-4
     rotor_noise_fraction: float = 0.0
-    rotor_index: float = 0.02
+    rotor_index: float = 0.2
     carrier_index: float = 0.3
     gate_probability: float = 0.999
     recovery_s: float = 0.3
