@@ -259,7 +259,7 @@ class Bench:
         for i, fault in enumerate(faults):
             missing = not_on_rig(fault, self.rig)
             if missing is not None:
-                raise InputError(f'faults.{i}.{missing.key}: value {missing.value}: '
+                raise InputError(f'faults[{i}].{missing.key}: value {missing.value}: '
                                  f'{missing.allowed}')
             kind = KINDS.index(type(fault))
             scene = Scene(self.rig, self.step_s, height_m,

@@ -80,6 +80,8 @@ class Condition:
         plant.set_axis_faults(self.axis_mode, self.axis_speed_m_s)
         plant.set_tether(self.tether_shorter_m, self.tether_cut)
         plant.world[k.PUSH:k.PUSH + 3] = self.push_map_n
+        # Calm, until the winds there are say otherwise.
+        plant.world[k.WIND:k.WIND + 3] = 0.0
         button.pressed = self.emergency_stop
         for topic, channel in channels.items():
             channel.filters = self.filters.get(topic, [])

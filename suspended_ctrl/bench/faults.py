@@ -23,7 +23,7 @@ from suspended_ctrl.rig.rig import Rig
 from suspended_ctrl.rig.section import Section
 from suspended_ctrl.rig.shared_files import find_file
 from suspended_ctrl.rig.yaml_file import read_text, read_tree
-from suspended_ctrl.rig.yaml_tree import key_text, parse
+from suspended_ctrl.rig.yaml_tree import key_text, parse, value_text
 
 
 class FaultFile(Section):
@@ -65,7 +65,7 @@ def load_faults(path_or_name: str | os.PathLike[str], rig: Rig,
         if missing is not None:
             place = ('faults', i, missing.key)
             raise InputError(f'{path}:{tree.line(place)}: {key_text(place)}: value '
-                             f'{missing.value}: {missing.allowed}')
+                             f'{value_text(missing.value)}: {missing.allowed}')
     return faults
 
 
