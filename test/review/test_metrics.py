@@ -358,7 +358,7 @@ def test_a_run_that_stopped_early_fails_whatever_its_figures():
 
 
 def test_a_recording_gives_the_figures_of_its_run(tmp_path):
-    log, rig = synthetic_run(until_s=8.0)
+    log, rig = synthetic_run(until_s=9.0)
     write_bag(log, names_of(rig), tmp_path / 'run')
     one = json.loads(assess(log, rig).text())
     two = json.loads(assess(read_bag(tmp_path / 'run'), rig).text())

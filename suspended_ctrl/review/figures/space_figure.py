@@ -175,7 +175,8 @@ def _in_space(figure: Figure, scene: Scene, box: tuple[float, float, float, floa
               scalex=False, scaley=False)
     _platform(axes, _seen(scene.hubs), _seen(scene.discs), _seen(scene.start), strong=True)
     above = scene.anchors[0][2] - high[2]
-    axes.annotate(f'tether, its anchor {above:.1f} m above', _seen(top[0]), xytext=(-8, -2),
+    x, y = _seen(top[0]).tolist()
+    axes.annotate(f'tether, its anchor {above:.1f} m above', (x, y), xytext=(-8, -2),
                   textcoords='offset points', va='top', ha='right', fontsize=SMALL_PX)
     if scene.plane is not None:
         corners = _seen(scene.plane)

@@ -114,8 +114,8 @@ def checked_reference(stamp_s: float, joint_names: Sequence[str], rows: Array) -
     stamp_s : float
     joint_names : sequence of str
     rows : ndarray, shape (m, 20)
-        Of each point: time, position, quaternion (w, x, y, z), velocity, rate, acceleration, rate's
-        derivative; changed where a quaternion is slightly off.
+        Of each point: time, position, quaternion (w, x, y, z), velocity, rate, acceleration,
+        rate's derivative; changed where a quaternion is slightly off.
 
     Returns
     -------
