@@ -163,7 +163,7 @@ def test_a_long_move_takes_the_time_of_a_trapezoid_and_the_lags_tail():
     assert fastest == pytest.approx(0.30, rel=1e-12)
 
 
-@settings(max_examples=60, deadline=None, phases=NO_SHRINKING)
+@settings(max_examples=30, deadline=None, phases=NO_SHRINKING)
 @given(strategies.lists(strategies.tuples(
     strategies.floats(-10.0, 10.0), strategies.integers(1, 400),
     strategies.sampled_from((k.FOLLOWS, k.STOPS, k.RUNS_AWAY)), strategies.floats(-0.3, 0.3)),

@@ -180,7 +180,7 @@ def test_imu_feels_its_own_place_and_axes():
     rates = np.array([truth.rate_body_rad_s for truth in truths])
     assert np.abs(rates).max() > 1.0
     acceleration = (points[2:] - 2.0 * points[1:-1] + points[:-2]) / step ** 2
-    felt = (body[1:-1] * turn).inv().apply(acceleration + (0.0, 0.0, 9.80665))
+    felt = (body[1:-1] * turn).inv().apply(acceleration + np.array((0.0, 0.0, 9.80665)))
     force = np.array([sample.force_m_s2 for sample in measured])
     # A sample is the mean over the step that ends at its stamp: two of them round each point.
     # Attitude and acceleration change over 2.5 ms by 1e-3 of a few m/s2.

@@ -72,7 +72,8 @@ def test_platform_below_its_tether_has_the_modes_of_a_double_pendulum():
         plant = Plant(rig, FINE_S, Start())
         tether, body = 1e-3 * shape / np.abs(shape).max()
         turn = Rotation.from_rotvec((0.0, -body, 0.0))
-        hook = plant.qpos[:3] + (length * np.sin(tether), 0.0, below + length * (1 - np.cos(tether)))
+        out, up = length * np.sin(tether), length * (1.0 - np.cos(tether))
+        hook = plant.qpos[:3] + np.array((out, 0.0, below + up))
         plant.qpos[:3] = hook - turn.apply((0.0, 0.0, below))
         plant.qpos[3:] = turn.as_quat(scalar_first=True)
         period = 2.0 * np.pi / np.sqrt(square)
@@ -208,7 +209,7 @@ def test_cut_and_snagged():
 
 def test_held_until_let_go():
     bench = exact_bench(start=Start(np.array((0.3, 0.0, 0.0)), held=True))
-    place = bench.equilibrium_map_m + (0.3, 0.0, 0.0)
+    place = bench.equilibrium_map_m + np.array((0.3, 0.0, 0.0))
     bench.advance(1.0)
     np.testing.assert_allclose(bench.truth().position_map_m, place, atol=1e-12)
     bench.let_go()

@@ -1,5 +1,6 @@
 """The Dryden wind, held to the formulas of MIL-F-8785C and to its own spectra."""
 
+from itertools import pairwise
 import math
 
 from bench_rigs import BAY_HEAD, exact_bench, run
@@ -91,7 +92,7 @@ def test_spectrum(wind, column, spectrum):
     frequency, density = welch(wind[:, column], 1.0 / STEP_S, nperseg=16384)
     # Well below half the sampling rate, above the lowest bins, in bands of averaged bins.
     edges = np.geomspace(0.02, 5.0, 8)
-    for low, high in zip(edges[:-1], edges[1:], strict=True):
+    for low, high in pairwise(edges):
         inside = (frequency >= low) & (frequency < high)
         theory = 2 * np.pi * spectrum(2 * np.pi * frequency / 10.0) / 10.0
         ratio = density[inside].sum() / theory[inside].sum()
@@ -116,12 +117,15 @@ def test_slow_wind_over_short_steps_keeps_its_digits():
 
 
 def test_a_standing_wind_pushes_the_platform_by_its_drag():
-    still, blown = exact_bench(), exact_bench(wind_m_s=8.0)
-    run(still, 20.0)
-    run(blown, 20.0)
-    drift = blown.truth().position_map_m - still.truth().position_map_m
-    # 1/2 rho A v^2 = 1.6 to 2.6 N for the mean of 6.7 m/s and its gusts, over m g / L = 21 N/m.
-    assert 0.03 < np.hypot(drift[0], drift[1]) < 0.4
+    bench = exact_bench(wind_m_s=8.0)
+    places = []
+    for i in range(15):
+        run(bench, 1.0 * (i + 1))
+        places.append(bench.truth().position_map_m - bench.equilibrium_map_m)
+    drift = np.mean(places, axis=0)
+    # 1/2 rho A v^2 = 2.1 N for the mean of 6.7 m/s, over m g / L = 16.4 N/m; the gusts' sigma of
+    # 1.6 m/s, slower than the run is long, makes that up to twice as much or as little.
+    assert 0.03 < np.hypot(drift[0], drift[1]) < 0.30
 
 
 def test_drag_brings_a_moving_platform_to_the_speed_of_formula():
