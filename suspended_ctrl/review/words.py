@@ -3,6 +3,12 @@
 from dataclasses import dataclass
 
 
+def plain(value: float, digits: int) -> str:
+    """Number with so many significant digits, large ones without an exponent."""
+    text = f'{value:.{digits}g}'
+    return f'{value:.0f}' if 'e' in text and abs(value) >= 1.0 else text
+
+
 @dataclass(frozen=True)
 class Reading:
     """Words, unit, factor from SI, and significant digits of a figure."""
@@ -14,11 +20,7 @@ class Reading:
 
     def number(self, value: float) -> str:
         """Value in this unit, with it."""
-        scaled = value * self.factor
-        text = f'{scaled:.{self.digits}g}'
-        if 'e' in text and abs(scaled) >= 1.0:
-            text = f'{scaled:.0f}'
-        return f'{text} {self.unit}'.rstrip()
+        return f'{plain(value * self.factor, self.digits)} {self.unit}'.rstrip()
 
 
 GROUPS: dict[str, dict[str, Reading]] = {

@@ -23,6 +23,7 @@ from suspended_ctrl.review.figures.theme import (
     SMALL_PX,
     SOFT,
 )
+from suspended_ctrl.review.words import plain
 from suspended_ctrl.rig.frozen import Array
 
 _ERROR_COLOURS = LinearSegmentedColormap.from_list('error', ['#a9cbe2', '#1d5f91', '#0a1f33'])
@@ -177,7 +178,8 @@ def _in_space(figure: Figure, scene: Scene, box: tuple[float, float, float, floa
     above = scene.anchors[0][2] - high[2]
     x, y = _seen(top[0]).tolist()
     axes.annotate(f'tether, its anchor {above:.1f} m above', (x, y), xytext=(-8, -2),
-                  textcoords='offset points', va='top', ha='right', fontsize=SMALL_PX)
+                  textcoords='offset points', va='top', ha='right', fontsize=SMALL_PX, zorder=7,
+                  bbox={'facecolor': 'white', 'edgecolor': 'none', 'pad': 1.5})
     if scene.plane is not None:
         corners = _seen(scene.plane)
         x, y = corners[np.argmin(corners[:, 1])].tolist()
@@ -210,6 +212,6 @@ def _scale(figure: Figure, scene: Scene) -> None:
     axes.set_yticks([])
     for spine in axes.spines.values():
         spine.set_visible(False)
-    axes.set_xticks([0.0, scene.top_mm], ['0', f'{scene.top_mm:.2g} mm'])
+    axes.set_xticks([0.0, scene.top_mm], ['0', f'{plain(scene.top_mm, 3)} mm'])
     axes.annotate('position error', (0, 1), xycoords='axes fraction', xytext=(0, 4),
                   textcoords='offset points', va='bottom', fontsize=SMALL_PX, color=SOFT)

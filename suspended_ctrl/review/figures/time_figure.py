@@ -27,6 +27,7 @@ from suspended_ctrl.review.figures.theme import (
     WIDTH_PX,
 )
 from suspended_ctrl.review.figures.thinning import thinned
+from suspended_ctrl.review.words import plain
 from suspended_ctrl.rig.frozen import Array
 
 _LEFT, _RIGHT, _GAP = 60, 136, 30
@@ -193,7 +194,7 @@ def _position(axes: Axes, story: Story, criteria: Criteria) -> None:
     axes.set_ylim(low, high + 0.12 * (high - low))
     heading(axes, 'Position error', 'mm, truth less reference, map axes')
     k = int(np.argmax(distance))
-    _peak(axes, time, distance, f'{distance[k]:.2g} mm at {time[k]:.1f} s')
+    _peak(axes, time, distance, f'{plain(distance[k], 3)} mm at {time[k]:.1f} s')
     _labels(axes, labels + ([bound] if bound else []))
 
 
@@ -205,7 +206,7 @@ def _attitude(axes: Axes, story: Story, criteria: Criteria) -> None:
     axes.set_ylim(0.0, axes.get_ylim()[1] * 1.12)
     heading(axes, 'Attitude error', 'mrad')
     k = int(np.argmax(angle))
-    _peak(axes, time, angle, f'{angle[k]:.3g} mrad at {time[k]:.1f} s')
+    _peak(axes, time, angle, f'{plain(angle[k], 3)} mrad at {time[k]:.1f} s')
     _labels(axes, [bound] if bound else [])
 
 
