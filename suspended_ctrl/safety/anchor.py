@@ -18,6 +18,8 @@ from suspended_ctrl.safety.settings import SafetySettings
 
 # At the end of a ramp an axis is given this many of its lags to come to rest there.
 _LAGS_TO_REST = 6.0
+# One carrier period and a half: without a new demand for so long the setpoint stands.
+_STANDS_S = 0.15
 
 
 @kernel(OUT_MATRIX(VECTOR, VECTOR, VECTOR, VECTOR, VECTOR, REAL))
@@ -78,10 +80,11 @@ class AnchorWatch:
     Measured axes against the carrier model of the commands sent, and the commands of a stop.
 
     While demands pass, they are the command. When they no longer pass, the setpoint in force is
-    ramped to rest at the carrier's own deceleration from where it is and as fast as the axis
-    moves, so that neither position nor speed steps. Once the axis is at rest there the command is
-    the last measured position, moved only when the measured one has left it by
-    ``anchor_deadband_m``: following noise would let the drive creep.
+    ramped to rest at the carrier's own deceleration, from where it is and from the speed that the
+    last demand gave it, so that neither its place nor its speed steps. After a silence it stands
+    already and stays. Once the axis is at rest there the command is the last measured position,
+    moved only when the measured one has left it by ``anchor_deadband_m``: following noise would
+    let the drive creep.
 
     Parameters
     ----------
@@ -124,6 +127,7 @@ class AnchorWatch:
         # Whether there is something to ramp down, and for how long the ramp has been at its end.
         self._moving = False
         self._ramped_s = 0.0
+        self._since_demand_s = 0.0
         self.anchor = np.array([*carrier.anchor_map(self._zero), 0.0, 0.0, 0.0])
         self.compared = np.zeros(2)
 
@@ -159,11 +163,13 @@ class AnchorWatch:
     def advance(self, dt_s: float) -> None:
         """Let the carrier model run for ``dt_s`` under the setpoint that was in force."""
         if self.known and self._moving:
+            self._since_demand_s += dt_s
             self._expected, self._expected_velocity = carrier_step(
                 self._carrier, self._expected, self._expected_velocity, self.setpoint_m, dt_s)
 
     def follow(self, position_m: Array, velocity_m_s: Array) -> None:
-        """Take a gated demand as the setpoint."""
+        """Take a new gated demand as the setpoint."""
+        self._since_demand_s = 0.0
         self.setpoint_m = position_m
         self.setpoint_velocity_m_s = velocity_m_s
         self._moving = True
@@ -183,8 +189,9 @@ class AnchorWatch:
         """
         if self._moving:
             if self._ramped_s < 0.0:
-                self.setpoint_velocity_m_s = self._expected_velocity
                 self._ramped_s = 0.0
+                if self._since_demand_s > _STANDS_S:
+                    self.setpoint_velocity_m_s = self._zero
             carrier = self._carrier
             self.setpoint_m, self.setpoint_velocity_m_s = ramp_to_rest(
                 self.setpoint_m, self.setpoint_velocity_m_s, carrier.acceleration_max_m_s2,

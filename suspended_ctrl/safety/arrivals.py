@@ -31,6 +31,7 @@ from suspended_ctrl.safety.values import EmergencyStop, Heartbeat, Refused, Safe
 
 _NEVER = -math.inf
 _VECTOR, _QUATERNION = (3,), (4,)
+_ODD_POSES = 4
 
 
 class Arrivals:
@@ -66,6 +67,8 @@ class Arrivals:
         Newest demands that passed the gate's bounds; None before the first.
     demand_refused : bool
         Whether the newest rotor demand did not.
+    pose_jump_s : float
+        How far the stamps of poses have jumped off this host's clock; 0 while they are sound.
     pressed, chain_gone, mission_gone : bool
         Emergency stop pressed; peers gone.
 
@@ -86,6 +89,8 @@ class Arrivals:
         self.now_s = 0.0
         self.pose = np.zeros(7)
         self.pose_stamp_s = _NEVER
+        self.pose_jump_s = 0.0
+        self._odd = 0
         self.motion = np.zeros(13)
         self.motion_stamp_s = 0.0
         self.motion_known = self.motion_new = self.pose_new = False
@@ -150,10 +155,16 @@ class Arrivals:
         stamp = sample.stamp_s
         if position.shape != _VECTOR or quaternion.shape != _QUATERNION:
             return False
-        if not self._timely(stamp, self._s.pose_age_max_s):
-            return False
-        # A known stamp ahead of now by more than may be is left from before a clock jump.
         known = self.pose_stamp_s
+        if not self._timely(stamp, self._s.pose_age_max_s):
+            # Late is one thing; back in time by more than delivery mixes up, or from the future,
+            # is another clock. A few in a row, so that one stray message is no jump.
+            ahead = stamp - self.now_s > self._s.stamp_ahead_max_s
+            self._odd += 1 if ahead or known - stamp > self._s.clock_jump_s else 0
+            self.pose_jump_s = stamp - known if self._odd >= _ODD_POSES else 0.0
+            return False
+        self._odd, self.pose_jump_s = 0, 0.0
+        # A known stamp ahead of now by more than may be is left from before a clock jump.
         if stamp <= known <= self.now_s + self._s.stamp_ahead_max_s:
             return True  # late or twice: not wrong, but not new
         if not take_pose(position, quaternion, self._pose_sensor, self.pose):
@@ -216,9 +227,9 @@ class Arrivals:
         return True
 
     def _take_rotor_demand(self, at: float, demand: RotorCommand) -> bool:
-        self.demand_refused = True
         if not self._timely(demand.stamp_s, self._s.stamp_age_max_s):
-            return False
+            return False  # as if it had not come
+        self.demand_refused = True
         speed = self._gate.rotors(demand.speed_rad_s)
         if speed is None:
             return False

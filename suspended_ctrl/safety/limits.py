@@ -95,7 +95,7 @@ def limit_table(rig: Rig, settings: SafetySettings) -> tuple[Limit, ...]:
               'silence of the rotor telemetry'),
         Limit('pose_stale', 1, 0.0, s.pose_stale_s, 's', 'age by stamp of the newest pose'),
         Limit('pose_rejected', 1, s.pose_rejected_s, 1.0, 'share',
-              'pose off the odometry, of what may be'),
+              'pose off the odometry, of what may be', s.pose_disagreement_cut),
         Limit('estimator_inconsistent', 1, 0.0, s.position_3sigma_m, 'm',
               '3 sigma of position', s.position_3sigma_cut_m / s.position_3sigma_m),
         Limit('carrier_states_stale', 1, 0.0, s.carrier_states_silence_s, 's',

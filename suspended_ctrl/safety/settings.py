@@ -22,7 +22,7 @@ class SafetySettings:
     rotor_losses_tolerated : int
         Dead rotors with which the layout still reaches all six directions: none or one.
     emergency_stop_required : bool
-        Whether silence on the emergency stop's line is a stop.
+        Whether silence on the emergency stop's line is a stop; the rig file says.
     emergency_stop_silence_s : float
         Architecture, section 5: 200 ms.
     heartbeat_silence_s : float or None
@@ -50,9 +50,10 @@ class SafetySettings:
         now by more than the last is refused too.
     position_3sigma_m, position_3sigma_cut_m : float
         Position uncertainty that starts a stop, and that ends it.
-    pose_disagreement_m, pose_disagreement_rad, pose_rejected_s : float
+    pose_disagreement_m, pose_disagreement_rad, pose_rejected_s, pose_disagreement_cut : float
         A pose this far from the odometry is not believed by it; for this long is a trip. Far over
-        the innovations of a sound filter (millimetres), under what a marker swap gives.
+        the innovations of a sound filter (millimetres), under what a marker swap gives. At this
+        many times as far nobody knows where the platform is, and a stop under power is cut.
     tilt_rad, tilt_cut_rad : float
         Angle between the platform's z and the vertical; the second while stopping.
     rate_rad_s, rate_cut_rad_s, speed_m_s, speed_cut_m_s : float
@@ -118,6 +119,7 @@ class SafetySettings:
     pose_disagreement_m: float = 0.05
     pose_disagreement_rad: float = 0.15
     pose_rejected_s: float = 0.20
+    pose_disagreement_cut: float = 6.0
     tilt_rad: float = 0.70
     tilt_cut_rad: float = 1.30
     rate_rad_s: float = 4.0
@@ -171,4 +173,6 @@ class SafetySettings:
             derived['stop_deceleration_m_s2'] = 0.5 * least_reach_n(rig) / rig.body.mass_kg
         if 'rotor_losses_tolerated' not in changes:
             derived['rotor_losses_tolerated'] = int(tolerates_rotor_loss(rig))
+        if 'emergency_stop_required' not in changes:
+            derived['emergency_stop_required'] = rig.emergency_stop_required
         return cls(**derived, **changes)  # type: ignore[arg-type]

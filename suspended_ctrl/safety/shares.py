@@ -88,7 +88,7 @@ class Shares:
         used[rows.MISSION_GONE] = 2.0 * seen.mission_gone
         used[rows.DEMAND_OUT_OF_BOUNDS] = 2.0 * seen.demand_refused
         used[rows.TICK_LATE] = gap_s / s.tick_late_s
-        used[rows.CLOCK_JUMP] = abs(jump_s) / s.clock_jump_s
+        used[rows.CLOCK_JUMP] = max(abs(jump_s), abs(seen.pose_jump_s)) / s.clock_jump_s
         used[rows.ESTIMATOR_INCONSISTENT] = seen.sigma3_m / s.position_3sigma_m
         powered = state == 'live' or state == 'stopping' or state == 'holding'
         used[rows.POSE_STALE] = pose_age / (s.pose_stale_s if powered else s.input_missing_s)

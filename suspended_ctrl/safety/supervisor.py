@@ -4,7 +4,7 @@ import numpy as np
 
 from suspended_ctrl.physics.rotation import rotate
 from suspended_ctrl.physics.values import CarrierCommand, RotorCommand
-from suspended_ctrl.rig.frozen import frozen
+from suspended_ctrl.rig.frozen import Array, frozen
 from suspended_ctrl.rig.rig import Rig
 from suspended_ctrl.safety import rows
 from suspended_ctrl.safety.arrivals import Arrivals
@@ -73,6 +73,7 @@ class SafetySupervisor:
         self._broken = np.zeros(count)
         self._zero = frozen(np.zeros(rig.rotors.count))
         self._command = self._zero
+        self._followed: tuple[Array, Array] | None = None
         self._t = -np.inf
         self._now_s = 0.0
         self._entered_s = 0.0
@@ -310,7 +311,10 @@ class SafetySupervisor:
         demand = seen.carrier_demand
         if (self.state == 'live' and demand is not None
                 and t - seen.at[rows.CARRIER_DEMAND] <= self.settings.carrier_demand_silence_s):
-            anchor.follow(*demand)
+            if demand is not self._followed:
+                anchor.follow(*demand)
+                self._followed = demand
         else:
+            self._followed = None
             anchor.stop(gap_s, self.state not in ROTOR_POWER)
         return CarrierCommand(self._now_s, anchor.setpoint_m, anchor.setpoint_velocity_m_s)
