@@ -196,7 +196,8 @@ def _progress_bar(what: str) -> Iterator[Callable[[float], None] | None]:
     from rich.console import Console
     from rich.progress import BarColumn, Progress, TextColumn, TimeRemainingColumn
 
-    with Progress(TextColumn('{task.description}'), BarColumn(), TextColumn('{task.percentage:.0f} %'),
+    with Progress(TextColumn('{task.description}'), BarColumn(),
+                  TextColumn('{task.percentage:.0f} %'),
                   TimeRemainingColumn(), console=Console(stderr=True), transient=True) as bar:
         task = bar.add_task(what, total=1.0)
         yield lambda share: bar.update(task, completed=share)

@@ -128,7 +128,20 @@ class Recorder:
 
     def finish(self, player: MissionPlayer, trouble: str | None, faults: Sequence[FaultEvent],
                wall_s: float) -> None:
-        """Add what is known only at the end; the parameters are as in the run's facts."""
+        """
+        Add what is known only at the end.
+
+        Parameters
+        ----------
+        player : MissionPlayer
+            Knows when the path was flown.
+        trouble : str or None
+            Why the run ended before its path did.
+        faults : sequence of FaultEvent
+        wall_s : float
+            Wall-clock time of the run.
+
+        """
         facts = self.log.facts
         start, end = player.path_window_s()
         if np.isfinite(start):

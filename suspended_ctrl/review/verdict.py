@@ -29,8 +29,10 @@ def print_verdict(assessment: Assessment, folder: Path, console: Console | None 
     out = console or Console(highlight=False)
     metrics = assessment.metrics
     table = Table(box=None, pad_edge=False)
-    for heading, side in (('figure', 'left'), ('value', 'right'), ('bound', 'right'), ('', 'left')):
-        table.add_column(heading, justify=side)  # type: ignore[arg-type]
+    table.add_column('figure')
+    table.add_column('value', justify='right')
+    table.add_column('bound', justify='right')
+    table.add_column()
     judged = {criterion.key for criterion in assessment.criteria}
     for criterion in assessment.criteria:
         table.add_row(*_row(criterion))
