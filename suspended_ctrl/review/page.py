@@ -75,7 +75,7 @@ def _said(criterion: Criterion) -> str:
     """One criterion in a sentence, in units that people read."""
     if criterion.key == RUN_COMPLETED:
         return ('The mission ran to the end of its path.' if criterion.passed
-                else f'The run did not complete: {criterion.reason}.')
+                else f'The run did not complete: {criterion.reason.replace("_", " ")}.')
     reading = reading_of(criterion.key)
     bound = reading.number(criterion.bound or 0.0)
     words = 'at least' if criterion.at_least else 'at most'
