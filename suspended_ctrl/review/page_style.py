@@ -48,7 +48,10 @@ svg.figure { display: block; }
 .caution { border: 1.5px solid var(--ink); padding: 12px 16px; margin-top: 40px; font-size: 14px; }
 .caution b { letter-spacing: 0.02em; }
 footer { color: var(--soft); font-size: 12.5px; margin-top: 18px; }
-@media screen and (max-width: 1000px) { body { width: auto; padding: 20px; } .groups, .facts { columns: 1; } }
+@media screen and (max-width: 1000px) {
+  body { width: auto; padding: 20px; }
+  .groups, .facts { columns: 1; }
+}
 @page { size: A4; margin: 12mm; }
 @media print {
   html, body { background: none; }
