@@ -32,6 +32,7 @@ def highest_bandwidth_hz(lag_s: float, damping_ratio: float) -> float:
     lag_s : float
         Time constant of the slowest rotor.
     damping_ratio : float
+        Of the law on a double integrator.
 
     Returns
     -------
@@ -51,6 +52,7 @@ def checked_bandwidth(bandwidth_hz: float, damping_ratio: float, lag_s: float) -
     Parameters
     ----------
     bandwidth_hz, damping_ratio, lag_s : float
+        Of the law, and the time constant of the slowest rotor, s.
 
     Returns
     -------

@@ -92,6 +92,7 @@ class ComputedTorque:
         t : float
             Now, s.
         inputs : LawInputs
+            What the controller sees this tick.
 
         Returns
         -------

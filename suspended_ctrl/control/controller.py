@@ -99,6 +99,7 @@ class WrenchController:
         Parameters
         ----------
         law : str
+            Its name.
 
         Raises
         ------
@@ -117,6 +118,7 @@ class WrenchController:
         t : float
             Now, s.
         inputs : ControlInputs
+            What is new since the last step.
 
         Returns
         -------

@@ -28,9 +28,13 @@ def shortest_duration_s(rig: Rig, body: LoadedBody, position_from: Array, positi
     Parameters
     ----------
     rig : Rig
+        The hardware.
     body : LoadedBody
+        The moving mass with what payload there is.
     position_from, position_to : ndarray, shape (3,)
+        Of the ``base_link`` origin in map, m.
     quaternion_from, quaternion_to : ndarray, shape (4,)
+        Body to map.
     margin : float
         Share of the reach kept free.
     at_least_s : float, optional

@@ -18,6 +18,7 @@ def halted(reference: Reference, now: float) -> tuple[Reference, float]:
     Parameters
     ----------
     reference : Reference
+        The path under way.
     now : float
         Host time, s.
 

@@ -55,6 +55,7 @@ class MissionPlayer:
         now : float
             Host time, s.
         safety_state : str
+            Of the supervisor.
         position_map_m, quaternion_wxyz : ndarray, shape (3,) and (4,), or None
             Of the platform, None when not known.
 

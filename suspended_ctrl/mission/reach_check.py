@@ -62,7 +62,9 @@ def check_keep_in(mission: Mission, reference: Reference) -> None:
     Parameters
     ----------
     mission : Mission
+        Names the place in its file.
     reference : Reference
+        Its path with times.
 
     Raises
     ------
@@ -90,7 +92,9 @@ def use_of_reach(rig: Rig, reference: Reference,
     Parameters
     ----------
     rig : Rig
+        The hardware.
     reference : Reference
+        The path.
     loads : list of (float, LoadedBody)
         The moving mass from each time of the reference on.
 

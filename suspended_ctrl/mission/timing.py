@@ -111,6 +111,7 @@ def timed(mission: Mission) -> TimedMission:
     Parameters
     ----------
     mission : Mission
+        As read from its file.
 
     Returns
     -------

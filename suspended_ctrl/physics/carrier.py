@@ -33,8 +33,11 @@ def carrier_step(carrier: Carrier, position_m: Array, velocity_m_s: Array, setpo
     Parameters
     ----------
     carrier : Carrier
+        Limits and lags of the axes.
     position_m, velocity_m_s, setpoint_m : ndarray, shape (k,)
+        Of each axis, m and m/s.
     dt_s : float
+        Step, s.
 
     Returns
     -------

@@ -26,9 +26,11 @@ def equilibrium(rig: Rig, anchor_map_m: Array | None = None,
     Parameters
     ----------
     rig : Rig
+        The hardware.
     anchor_map_m : ndarray, shape (3,), optional
         The anchor; where the carrier's zero stands if left out.
     payload_kg : float
+        Mass that hangs on beside the body.
 
     Returns
     -------

@@ -92,6 +92,7 @@ def rotor_lag_left_s(rig: Rig, lag_gain: float) -> float:
     Parameters
     ----------
     rig : Rig
+        The hardware.
     lag_gain : float
         At least 1.
 
@@ -158,9 +159,11 @@ class Lead:
         Parameters
         ----------
         estimate : Estimate
+            Where the prediction starts, at its own stamp.
         t : float
             Now, s.
         body : LoadedBody
+            The moving mass with what payload there is.
 
         Returns
         -------

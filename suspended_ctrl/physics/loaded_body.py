@@ -40,6 +40,7 @@ def loaded_body(rig: Rig, payload: Payload | None = None) -> LoadedBody:
     Parameters
     ----------
     rig : Rig
+        The hardware.
     payload : Payload, optional
         A point mass on the platform.
 

@@ -44,7 +44,9 @@ def carried_anchors(rig: Rig, reference: Reference) -> list[Array]:
     Parameters
     ----------
     rig : Rig
+        The hardware.
     reference : Reference
+        The path.
 
     Returns
     -------
@@ -88,9 +90,13 @@ def rotor_wrench_along(rig: Rig, body: LoadedBody, reference: Reference,
     Parameters
     ----------
     rig : Rig
+        The hardware.
     body : LoadedBody
+        The moving mass with what payload there is.
     reference : Reference
+        The path.
     anchor_map_m : ndarray, shape (m, 3)
+        Of the tether at each point.
 
     Returns
     -------

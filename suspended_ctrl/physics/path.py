@@ -26,7 +26,7 @@ class Progress:
 
 
 def sample_times(duration_s: float) -> Array:
-    """Times from 0 to ``duration_s``, evenly, at most the reference's spacing apart."""
+    """Spread times from 0 to ``duration_s`` evenly, at most the reference's spacing apart."""
     count = max(int(np.ceil(duration_s / SPACING_MAX_S - 1e-9)), 1) + 1
     return np.linspace(0.0, duration_s, count)
 
@@ -73,9 +73,11 @@ def straight(progress: Progress, position_from: Array, position_to: Array, quate
     Parameters
     ----------
     progress : Progress
+        Share of the way over time, and its derivatives.
     position_from, position_to : ndarray, shape (3,)
         map, m.
     quaternion_from, quaternion_to : ndarray, shape (4,)
+        Body to map.
 
     Returns
     -------
@@ -104,8 +106,11 @@ def to_rest(position: Array, velocity: Array, acceleration: Array, quaternion: A
     position, velocity, acceleration : ndarray, shape (3,)
         Start, map.
     quaternion, quaternion_to : ndarray, shape (4,)
+        Start and end, body to map.
     position_to : ndarray, shape (3,)
+        End, map.
     duration_s, start_s : float
+        How long it takes, and when it starts.
 
     Returns
     -------

@@ -70,6 +70,7 @@ class Reach:
         Parameters
         ----------
         wrench : ndarray, shape (6,) or (n, 6)
+            N and N m, in the axes of the set.
 
         Returns
         -------

@@ -44,6 +44,7 @@ class Registry(Generic[_Part]):
         Parameters
         ----------
         name : str
+            As ``names`` lists it.
 
         Returns
         -------

@@ -21,6 +21,7 @@ def acceleration(mass: float, inertia: Array, inertia_inverse: Array, quaternion
     inertia, inertia_inverse : ndarray, shape (3, 3)
         About the centre of mass, body axes, and its inverse.
     quaternion : ndarray, shape (4,)
+        Body to map.
     rate_body : ndarray, shape (3,)
         rad/s.
     wrench_body : ndarray, shape (6,)

@@ -6,10 +6,11 @@ Formulas: J. Solà, Quaternion kinematics for the error-state Kalman filter, arX
 """
 
 import numpy as np
-from transforms3d.euler import euler2quat, quat2euler
 
 from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.rig.frozen import Array
+
+from transforms3d.euler import euler2quat, quat2euler
 
 # Below this angle series replace quotients; their next term is under 1e-17 there.
 _SMALL_RAD = 1e-4
@@ -108,7 +109,7 @@ def rotate_back(q: Array, v: Array) -> Array:
 
 @kernel(OUT_VECTOR(VECTOR))
 def exponential(phi: Array) -> Array:
-    """Unit quaternion of a rotation vector in rad, Solà eq. 101."""
+    """Turn a rotation vector in rad into a unit quaternion, Solà eq. 101."""
     angle2 = phi[0] * phi[0] + phi[1] * phi[1] + phi[2] * phi[2]
     angle = np.sqrt(angle2)
     out = np.empty(4)

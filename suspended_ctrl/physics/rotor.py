@@ -128,6 +128,7 @@ class RotorModel:
         Parameters
         ----------
         speed_rad_s, speed_rate_rad_s2 : ndarray, shape (n,)
+            Of each rotor, and its rate of change.
         rate_body_rad_s : ndarray, shape (3,)
             For the gyroscopic torque.
 

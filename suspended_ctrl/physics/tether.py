@@ -23,6 +23,7 @@ def hook_force(hook_map: Array, hook_velocity_map: Array, anchor_map: Array,
     Parameters
     ----------
     hook_map, hook_velocity_map, anchor_map, anchor_velocity_map : ndarray, shape (3,)
+        Both ends of the tether, m and m/s.
     rest_length, stiffness, damping : float
         m, N/m, N s/m.
 
@@ -76,11 +77,13 @@ def tether_wrench(tether: Tether, centre_m: Array, position_map_m: Array, veloci
     Parameters
     ----------
     tether : Tether
+        Its law and its hook.
     centre_m : ndarray, shape (3,)
         Point of the wrench, from the ``base_link`` origin.
     position_map_m, velocity_map_m_s, quaternion_wxyz, rate_body_rad_s : ndarray
         Of the ``base_link`` origin.
     anchor_map_m, anchor_velocity_map_m_s : ndarray, shape (3,)
+        The other end.
 
     Returns
     -------

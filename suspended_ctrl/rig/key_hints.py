@@ -60,7 +60,9 @@ def unknown_key_hint(key: str, allowed: Collection[str]) -> str:
     Parameters
     ----------
     key : str
+        As written.
     allowed : collection of str
+        Keys that may stand there.
 
     Returns
     -------

@@ -85,7 +85,7 @@ class Rotors:
 
     @property
     def count(self) -> int:
-        """Number of rotors."""
+        """How many rotors there are."""
         return len(self.names)
 
     @property
@@ -234,10 +234,15 @@ class KeepIn:
 @dataclass(frozen=True, eq=False)
 class Rig:
     """
-    A whole rig; see the fields' own classes.
+    A whole rig.
 
     Attributes
     ----------
+    name : str
+    body, rotors, tether, carrier, sensors : Body, Rotors, Tether, Carrier, Sensors
+        The parts.
+    keep_in : KeepIn
+        Where the platform may be.
     emergency_stop_required : bool
         Whether silence of the emergency stop counts as a stop.
 

@@ -23,6 +23,7 @@ def read_text(path: str | os.PathLike[str]) -> str:
     Parameters
     ----------
     path : path-like
+        Of the file.
 
     Returns
     -------
@@ -55,6 +56,7 @@ def read_file(path: str | os.PathLike[str], model: type[Model]) -> Model:
     Parameters
     ----------
     path : path-like
+        Of the file.
     model : subclass of pydantic.BaseModel
         Best built of ``Section`` and the types beside it. Lists arrive as tuples.
 
@@ -80,9 +82,11 @@ def read_tree(tree: Tree, file: str, model: type[Model]) -> Model:
     Parameters
     ----------
     tree : Tree
+        The values.
     file : str
         Its name, for messages.
     model : subclass of pydantic.BaseModel
+        What they must be.
 
     Returns
     -------
@@ -170,8 +174,8 @@ def _allowed(error: dict[str, Any], context: dict[str, Any], path: KeyPath, valu
         bare = ', without quotes and without a unit' if isinstance(value, str) else ''
         return f'a number{in_unit}{bare}'
     if kind in ('too_short', 'too_long'):
-        bound, words = ('min_length', 'at least') if kind == 'too_short' else ('max_length',
-                                                                              'at most')
+        short = kind == 'too_short'
+        bound, words = ('min_length', 'at least') if short else ('max_length', 'at most')
         return f'a list of {words} {context[bound]}, there are {context["actual_length"]}'
     if kind == 'literal_error':
         return f'one of {context["expected"]}'

@@ -149,6 +149,7 @@ def parse(text: str, file: str) -> Tree:
     Parameters
     ----------
     text : str
+        Contents of the file.
     file : str
         Its name, for messages.
 

@@ -5,9 +5,10 @@ from numpy.testing import assert_allclose
 import pytest
 from scipy.linalg import expm
 from scipy.spatial.transform import Rotation
-from transforms3d.quaternions import qmult, quat2mat
 
 from suspended_ctrl.physics import rotation as rot
+
+from transforms3d.quaternions import qmult, quat2mat
 
 # Rounding of a handful of products of numbers of size one.
 EXACT = 1e-14

@@ -8,7 +8,6 @@ from mcap_ros2.decoder import DecoderFactory
 import numpy as np
 import pytest
 from rosbags.rosbag2 import Reader
-from synthetic_run import names_of, synthetic_run
 
 from suspended_ctrl.physics.values import PoseSample, RotorSample
 from suspended_ctrl.review.bag import BagWriter, write_bag
@@ -17,6 +16,8 @@ from suspended_ctrl.review.bag_types import BagTypes, typestore
 from suspended_ctrl.review.columns import LEAVES
 from suspended_ctrl.review.log import RunLog
 from suspended_ctrl.review.topics import JointNames, TOPICS
+
+from synthetic_run import names_of, synthetic_run
 
 NAMES = JointNames(('r1', 'r2'), ('x',))
 LEVEL = np.array([1.0, 0.0, 0.0, 0.0])

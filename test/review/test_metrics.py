@@ -8,7 +8,6 @@ import numpy as np
 import pytest
 from scipy.spatial.transform import Rotation
 from scipy.stats import chi2
-from synthetic_run import names_of, synthetic_run
 
 from suspended_ctrl.physics.lead import PlatformState
 from suspended_ctrl.physics.path import joined, minimum_jerk, straight
@@ -37,6 +36,8 @@ from suspended_ctrl.review.rows import (
     rotation_vectors,
 )
 from suspended_ctrl.rig.file import load_rig
+
+from synthetic_run import names_of, synthetic_run
 
 RIG = load_rig('bay_head')
 LEVEL = np.array([1.0, 0.0, 0.0, 0.0])

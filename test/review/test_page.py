@@ -8,13 +8,14 @@ import subprocess
 
 import numpy as np
 import pytest
-from synthetic_run import synthetic_run
 
 from suspended_ctrl.review.figures.thinning import thinned
 from suspended_ctrl.review.log import RunFacts, RunLog
 from suspended_ctrl.review.metrics import assess
 from suspended_ctrl.review.page import render_page
 from suspended_ctrl.rig.file import load_rig
+
+from synthetic_run import synthetic_run
 
 CRITERIA = {'tracking.position_max_m': 0.010, 'tracking.attitude_max_rad': 0.10,
             'tether.tension_min_n': {'at_least': 5.0}}

@@ -5,7 +5,6 @@ from xml.etree import ElementTree as ET
 
 import numpy as np
 import pytest
-from synthetic_run import names_of, synthetic_run
 
 from suspended_ctrl.review import run_folder
 from suspended_ctrl.review.bag import write_bag
@@ -13,6 +12,8 @@ from suspended_ctrl.review.bag_read import read_bag
 from suspended_ctrl.review.metrics import assess
 from suspended_ctrl.review.run_folder import write_run
 from suspended_ctrl.rig.errors import InputError
+
+from synthetic_run import names_of, synthetic_run
 
 CRITERIA = {'tracking.position_max_m': 0.01, 'effort.rotor_energy_j': 1.0}
 
