@@ -1,16 +1,17 @@
 """The effort allocator: everything that surrounds a strategy in a tick."""
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
-from suspended_ctrl.allocation.allocators import ALLOCATORS, Allocator, PlanningAllocator
+from suspended_ctrl.allocation.allocators import Allocator, ALLOCATORS, PlanningAllocator
 from suspended_ctrl.allocation.carrier_observer import CarrierObserver
 from suspended_ctrl.allocation.carrier_plan import PlanRequest
 from suspended_ctrl.allocation.lag_inversion import led_command, reachable_speed
 from suspended_ctrl.allocation.pseudo_inverse import PseudoInverse
 from suspended_ctrl.allocation.rotor_observer import RotorObserver
 from suspended_ctrl.allocation.rotor_qp import rotor_wrench_wanted
+from suspended_ctrl.allocation.swap import swap_refusal
 from suspended_ctrl.allocation.values import (
     Allocation,
     AllocationInputs,
@@ -70,6 +71,8 @@ class EffortAllocator:
     ----------
     rig : Rig
     settings : EffortSettings
+    strategy : Allocator, optional
+        Made beforehand by the maker of the settings' name.
 
     Raises
     ------
@@ -78,10 +81,11 @@ class EffortAllocator:
 
     """
 
-    def __init__(self, rig: Rig, settings: EffortSettings) -> None:
+    def __init__(self, rig: Rig, settings: EffortSettings,
+                 strategy: Allocator | None = None) -> None:
         self.rig = rig
         self.settings = settings
-        self._strategy: Allocator = ALLOCATORS.maker(settings.allocator)(rig)
+        self._strategy = strategy or ALLOCATORS.maker(settings.allocator)(rig)
         self._model = RotorModel(rig.rotors, rig.body.centre_of_mass_m)
         self._lead = Lead(rig, settings.transport_s, settings.lag_gain)
         self._rotors = RotorObserver(
@@ -96,8 +100,19 @@ class EffortAllocator:
         self._setpoint: Array | None = None
         self._rate = np.zeros(rig.rotors.count)
         self._state = 'locked'
-        self._fallbacks = 0
-        self._bad_demands = 0
+        self._fallbacks = self._bad_demands = 0
+        self._last: tuple[float, AllocationInputs] | None = None
+
+    def swap_refusal(self, strategy: Allocator) -> str | None:
+        """Why a strategy of this rig must not take over now, see ``swap``; None if it may."""
+        return None if self._last is None or self._state not in TURNING else swap_refusal(
+            self.rig, self._last[1], strategy.step(*self._last), self._setpoint,
+            self.settings.tick_s)
+
+    def swap(self, allocator: str, strategy: Allocator) -> None:
+        """Change to a strategy of this rig, made by the maker of that name."""
+        self._strategy = strategy
+        self.settings = replace(self.settings, allocator=allocator)
 
     def step(self, t: float, inputs: EffortInputs) -> EffortOutputs:
         """
@@ -108,6 +123,7 @@ class EffortAllocator:
         t : float
             Now, s.
         inputs : EffortInputs
+            What is new since the last step.
 
         Returns
         -------
@@ -120,6 +136,7 @@ class EffortAllocator:
         if inputs.safety_state not in TURNING or self._estimate is None:
             return self._at_rest(t, stamp)
         seen = self._seen(t, stamp, inputs.demand)
+        self._last = t, seen
         allocation = self._allocated(t, seen)
         target = self._model.speed_for_thrust(allocation.thrust_n)
         rotors = self.rig.rotors
@@ -139,7 +156,7 @@ class EffortAllocator:
 
     def plan_request(self, t: float) -> PlanRequest | None:
         """
-        What the carrier's plan is to be made from, after the step at ``t``.
+        Say what the carrier's plan is to be made from, after the step at ``t``.
 
         Parameters
         ----------
@@ -157,7 +174,7 @@ class EffortAllocator:
         return self._strategy.plan_request(t)
 
     def solve_plan(self, request: PlanRequest) -> CarrierPlan:
-        """Solve a request in this process; it may take milliseconds and belongs outside the tick."""
+        """Solve a request here; it may take milliseconds and belongs outside the tick."""
         assert isinstance(self._strategy, PlanningAllocator)
         return self._strategy.solve_plan(request)
 
@@ -235,8 +252,6 @@ class EffortAllocator:
         rate = (command - self._rotors.speed_rad_s) / self.rig.rotors.time_constant_s
         share = self.settings.tick_s / (lag + self.settings.tick_s)
         self._rate = self._rate + share * (rate - self._rate)
-
-    # ------------------------------------------------------------ what comes of it
 
     def _allocated(self, t: float, seen: AllocationInputs) -> Allocation:
         allocation = self._strategy.step(t, seen)

@@ -74,7 +74,7 @@ def _build_pose(types: MessageTypes, position: Array, quaternion_wxyz: Array) ->
 
 
 def build_pose(types: MessageTypes, sample: PoseSample) -> Any:
-    """PoseStamped in map."""
+    """Build a PoseStamped in map."""
     return types('geometry_msgs/msg/PoseStamped')(
         header=build_header(types, sample.stamp_s, MAP),
         pose=_build_pose(types, sample.position_map_m, sample.quaternion_wxyz))
@@ -102,12 +102,12 @@ def _build_joints(types: MessageTypes, stamp_s: float, names: Sequence[str],
 
 def build_rotors(types: MessageTypes, sample: RotorSample | RotorCommand,
                  rotors: Sequence[str]) -> Any:
-    """JointState of rotor speeds, measured or commanded, named as the rig names its rotors."""
+    """Build a JointState of rotor speeds, measured or commanded, named as the rig names them."""
     return _build_joints(types, sample.stamp_s, rotors, (), sample.speed_rad_s)
 
 
 def build_carrier(types: MessageTypes, sample: CarrierSample, axes: Sequence[str]) -> Any:
-    """JointState of the carrier's axes, named as the rig names them."""
+    """Build a JointState of the carrier's axes, named as the rig names them."""
     return _build_joints(types, sample.stamp_s, axes, sample.position_m, sample.velocity_m_s)
 
 
@@ -120,13 +120,13 @@ def _build_wrench(types: MessageTypes, stamp_s: float, frame: str, force: Array,
 
 
 def build_wrench(types: MessageTypes, wrench: Wrench) -> Any:
-    """WrenchStamped in ``base_link``."""
+    """Build a WrenchStamped in ``base_link``."""
     return _build_wrench(types, wrench.stamp_s, BASE_LINK, wrench.force_body_n,
                          wrench.torque_body_nm)
 
 
 def build_disturbance(types: MessageTypes, value: Disturbance | Estimate) -> Any:
-    """WrenchStamped in map, from a disturbance or from the estimate that carries one."""
+    """Build a WrenchStamped in map, from a disturbance or from the estimate that carries one."""
     if isinstance(value, Estimate):
         return _build_wrench(types, value.stamp_s, MAP, value.disturbance_force_map_n,
                              value.disturbance_torque_map_nm)
@@ -134,13 +134,13 @@ def build_disturbance(types: MessageTypes, value: Disturbance | Estimate) -> Any
 
 
 def build_tether_load(types: MessageTypes, sample: TetherLoadSample) -> Any:
-    """WrenchStamped whose ``force.z`` is the tension."""
+    """Build a WrenchStamped whose ``force.z`` is the tension."""
     return _build_wrench(types, sample.stamp_s, 'tether',
                          np.array([0.0, 0.0, sample.tension_n]), np.zeros(3))
 
 
 def build_payload(types: MessageTypes, value: PayloadEvent | Estimate) -> Any:
-    """InertiaStamped of a point mass, from a mission's event or from the estimate."""
+    """Build an InertiaStamped of a point mass, from a mission's event or from the estimate."""
     payload = value.payload if isinstance(value, Estimate) else value
     return types('geometry_msgs/msg/InertiaStamped')(
         header=build_header(types, value.stamp_s, BASE_LINK),

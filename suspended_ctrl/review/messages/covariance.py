@@ -26,6 +26,7 @@ def turned(covariance: Array, first: int, quaternion: Array, to_map: bool) -> Ar
     Parameters
     ----------
     covariance : ndarray, shape (6, 6)
+        Of two vectors of three.
     first : int
         0 or 3: which three are turned.
     quaternion : ndarray, shape (4,)

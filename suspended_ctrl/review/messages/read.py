@@ -67,7 +67,7 @@ def read_vector(vector: Any, what: str) -> Array:
 
 
 def read_quaternion(quaternion: Any) -> Array:
-    """Unit quaternion (w, x, y, z), normalised where single precision left it slightly off."""
+    """Read a unit quaternion (w, x, y, z), normalised where single precision left it a bit off."""
     w, x, y, z = quaternion.w, quaternion.x, quaternion.y, quaternion.z
     square = w * w + x * x + y * y + z * z
     if not abs(square - 1.0) < 2.0 * UNIT_TOLERANCE:
@@ -118,7 +118,7 @@ def _in_order(values: Array, order: list[int] | None) -> Array:
 
 
 def read_pose(message: Any) -> PoseSample:
-    """PoseStamped."""
+    """Read a PoseStamped."""
     pose = message.pose
     return PoseSample(read_stamp(message), read_vector(pose.position, 'position'),
                       read_quaternion(pose.orientation))
@@ -137,17 +137,17 @@ def _read_speeds(message: Any, rotors: Sequence[str]) -> Array:
 
 
 def read_rotors(message: Any, rotors: Sequence[str]) -> RotorSample:
-    """JointState of measured rotor speeds, in any order of names, into the rig's."""
+    """Read a JointState of measured rotor speeds, in any order of names, into the rig's."""
     return RotorSample(read_stamp(message), _read_speeds(message, rotors))
 
 
 def read_rotor_command(message: Any, rotors: Sequence[str]) -> RotorCommand:
-    """JointState of commanded rotor speeds, in any order of names, into the rig's."""
+    """Read a JointState of commanded rotor speeds, in any order of names, into the rig's."""
     return RotorCommand(read_stamp(message), _read_speeds(message, rotors))
 
 
 def read_carrier(message: Any, axes: Sequence[str]) -> CarrierSample:
-    """JointState of the carrier's axes, in any order of names, into the rig's."""
+    """Read a JointState of the carrier's axes, in any order of names, into the rig's."""
     order = name_order(message.name, axes)
     return CarrierSample(
         read_stamp(message),
@@ -156,21 +156,21 @@ def read_carrier(message: Any, axes: Sequence[str]) -> CarrierSample:
 
 
 def read_wrench(message: Any) -> Wrench:
-    """WrenchStamped in ``base_link``."""
+    """Read a WrenchStamped in ``base_link``."""
     wrench = message.wrench
     return Wrench(read_stamp(message), read_vector(wrench.force, 'force'),
                   read_vector(wrench.torque, 'torque'))
 
 
 def read_disturbance(message: Any) -> Disturbance:
-    """WrenchStamped in map."""
+    """Read a WrenchStamped in map."""
     wrench = message.wrench
     return Disturbance(read_stamp(message), read_vector(wrench.force, 'force'),
                        read_vector(wrench.torque, 'torque'))
 
 
 def read_tether_load(message: Any) -> TetherLoadSample:
-    """WrenchStamped whose ``force.z`` is the tension; a load cell may read a little below zero."""
+    """Read a WrenchStamped whose ``force.z`` is the tension; it may be a little below zero."""
     tension = message.wrench.force.z
     if not isfinite(tension):
         raise MessageError(f'tension is not finite: {tension:g}')
@@ -185,12 +185,12 @@ def _read_mass(inertia: Any) -> float:
 
 
 def read_payload(message: Any) -> Payload:
-    """InertiaStamped as the estimator's payload."""
+    """Read an InertiaStamped as the estimator's payload."""
     return Payload(_read_mass(message.inertia), read_vector(message.inertia.com, 'com'))
 
 
 def read_payload_event(message: Any) -> PayloadEvent:
-    """InertiaStamped as what the mission says hangs on the platform."""
+    """Read an InertiaStamped as what the mission says hangs on the platform."""
     return PayloadEvent(read_stamp(message), _read_mass(message.inertia),
                         read_vector(message.inertia.com, 'com'))
 
@@ -220,6 +220,7 @@ def read_odometry(message: Any, disturbance: Disturbance | None = None,
     Parameters
     ----------
     message : nav_msgs/Odometry
+        As it came.
     disturbance, payload
         The newest of the estimator's other two topics; zero where left out.
 

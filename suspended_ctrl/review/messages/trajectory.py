@@ -38,11 +38,12 @@ def _duration(types: MessageTypes, seconds: float) -> Any:
 def build_reference(types: MessageTypes, reference: Reference | None,
                     stamp_s: float | None = None) -> Any:
     """
-    MultiDOFJointTrajectory in map: linear rates in map, angular ones in ``base_link``.
+    Build a MultiDOFJointTrajectory in map: linear rates in map, angular ones in ``base_link``.
 
     Parameters
     ----------
     types : MessageTypes
+        Of the library that the message is for.
     reference : Reference or None
         None gives the message without points that clears a reference.
     stamp_s : float, optional
@@ -85,7 +86,7 @@ def _point_row(point: Any, k: int) -> tuple[float, ...]:
 
 def read_reference(message: Any) -> Reference | None:
     """
-    MultiDOFJointTrajectory of ``base_link``.
+    Read a MultiDOFJointTrajectory of ``base_link``.
 
     Returns
     -------
@@ -107,12 +108,14 @@ def read_reference(message: Any) -> Reference | None:
 
 def checked_reference(stamp_s: float, joint_names: Sequence[str], rows: Array) -> Reference:
     """
-    Reference from the numbers of a message.
+    Build a reference from the numbers of a message.
 
     Parameters
     ----------
     stamp_s : float
+        Of the message's header.
     joint_names : sequence of str
+        Of the message.
     rows : ndarray, shape (m, 20)
         Of each point: time, position, quaternion (w, x, y, z), velocity, rate, acceleration,
         rate's derivative; changed where a quaternion is slightly off.
@@ -164,19 +167,19 @@ def _joint_trajectory(types: MessageTypes, stamp_s: float, axes: Sequence[str],
 
 def build_carrier_command(types: MessageTypes, command: CarrierCommand,
                           axes: Sequence[str]) -> Any:
-    """JointTrajectory of one point, due at once."""
+    """Build a JointTrajectory of one point, due at once."""
     return _joint_trajectory(types, command.stamp_s, axes,
                              [(0.0, command.position_m, command.velocity_m_s)])
 
 
 def build_carrier_plan(types: MessageTypes, plan: CarrierPlan, axes: Sequence[str]) -> Any:
-    """JointTrajectory of the whole horizon."""
+    """Build a JointTrajectory of the whole horizon."""
     return _joint_trajectory(types, plan.stamp_s, axes, list(zip(
         plan.time_s.tolist(), plan.position_m, plan.velocity_m_s, strict=True)))
 
 
 def read_carrier_command(message: Any, axes: Sequence[str]) -> CarrierCommand:
-    """JointTrajectory of one point, in any order of names, into the rig's."""
+    """Read a JointTrajectory of one point, in any order of names, into the rig's."""
     order = name_order(message.joint_names, axes)
     if len(message.points) != 1:
         raise MessageError(f'{len(message.points)} points, 1 expected')
@@ -189,7 +192,7 @@ def read_carrier_command(message: Any, axes: Sequence[str]) -> CarrierCommand:
 
 
 def read_carrier_plan(message: Any, axes: Sequence[str]) -> CarrierPlan:
-    """JointTrajectory over a horizon, in any order of names, into the rig's."""
+    """Read a JointTrajectory over a horizon, in any order of names, into the rig's."""
     order = name_order(message.joint_names, axes)
     count = len(axes)
     points = message.points
