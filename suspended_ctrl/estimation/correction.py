@@ -12,6 +12,9 @@ import numpy as np
 from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.rig.frozen import Array
 
+# A motion of five times its standard deviation counts half.
+SURE = 25.0
+
 
 @kernel(types.void(VECTOR, VECTOR, MATRIX, VECTOR, VECTOR, VECTOR, OUT_MATRIX, OUT_VECTOR))
 def imu_residual(x: Array, s: Array, j: Array, rate: Array, force: Array, arm: Array, h: Array,
@@ -106,15 +109,16 @@ def imu_noise(r: Array, n: Array, sensor: Array, dt: float, noise: Array, common
                                     + common[3 + i, 8] * r[2, k]) / dt
 
 
-@kernel(types.void(VECTOR, VECTOR, VECTOR, VECTOR, OUT_MATRIX, OUT_VECTOR, OUT_VECTOR))
-def pose_residual(x: Array, position: Array, quaternion: Array, arm: Array, h: Array, nu: Array,
-                  drift: Array) -> None:
+@kernel(types.void(VECTOR, MATRIX, VECTOR, VECTOR, VECTOR, OUT_MATRIX, OUT_VECTOR, OUT_VECTOR))
+def pose_residual(x: Array, p: Array, position: Array, quaternion: Array, arm: Array, h: Array,
+                  nu: Array, drift: Array) -> None:
     """
     Write Jacobian and innovation of a pose, and how the innovation answers to its stamp.
 
     Parameters
     ----------
-    x : ndarray, shape (25,)
+    x, p : ndarray
+        State and covariance.
     position : ndarray, shape (3,)
         Of the marker body, map.
     quaternion : ndarray, shape (4,)
@@ -125,9 +129,11 @@ def pose_residual(x: Array, position: Array, quaternion: Array, arm: Array, h: A
         Out: derivative of (position in map, attitude in body) by the errors.
     nu : ndarray, shape (6,)
         Out: measured less expected.
-    drift : ndarray, shape (6,)
+    drift : ndarray, shape (7,)
         Out: minus the velocity of the marker body and minus the rate; a pose stamped too late by
-        d shows ``drift * d``.
+        d shows ``drift * d``. Each is shrunk towards zero where it is not well above its own
+        error, which is in the innovation as well and would pass for an offset; the greater of the
+        two shares left is last.
 
     """
     w, a, b, d = x[6], x[7], x[8], x[9]
@@ -160,6 +166,14 @@ def pose_residual(x: Array, position: Array, quaternion: Array, arm: Array, h: A
             nu[i] -= r[i, k] * arm[k]
             drift[i] -= r[i, k] * swing[k]
         drift[3 + i] = -x[10 + i]
+    drift[6] = 0.0
+    for first in (0, 3):
+        square = drift[first]**2 + drift[first + 1]**2 + drift[first + 2]**2
+        error = p[6 + first, 6 + first] + p[7 + first, 7 + first] + p[8 + first, 8 + first]
+        weight = square / (square + SURE * error + 1e-12)
+        drift[6] = max(drift[6], weight)
+        for i in range(3):
+            drift[first + i] *= weight
     # Rotation vector of conj(q) times the measurement, Solà eq. 103.
     q0, q1, q2, q3 = quaternion[0], quaternion[1], quaternion[2], quaternion[3]
     e0 = w * q0 + a * q1 + b * q2 + d * q3
@@ -195,7 +209,7 @@ def correct(p: Array, h: Array, nu: Array, noise: Array, common: Array, drift: A
         Covariance of the innovation's noise.
     common : ndarray, shape (m, 24) or (0, 24)
         Covariance of that noise and the errors; no rows where they have nothing in common.
-    drift : ndarray, shape (m,)
+    drift : ndarray, shape (m,) or longer
         Direct answer of the innovation to an offset of the stamp; zeros where there is none.
     options : ndarray, shape (4,)
         Gate on the squared distance (inf: none); the monitor's offset (s) and its variance (s^2);

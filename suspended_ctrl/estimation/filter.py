@@ -31,6 +31,8 @@ IMU_GAP_S = 0.012
 # One standard deviation of the stamps' offset that the monitor starts from, s.
 OFFSET_SPREAD_S = 0.010
 OFFSET_WALK_S_S05 = 0.0005
+# Motion of under ten times its standard deviation teaches the monitor nothing.
+TEACHING_SHARE = 0.8
 # Share of a load cell's difference to the model that each of its samples takes out.
 TENSION_GAIN = 0.2
 
@@ -85,6 +87,7 @@ class ErrorStateFilter:
         self.p = np.zeros((ERRORS, ERRORS))
         self.nis = float('nan')
         self.offset = (0.0, OFFSET_SPREAD_S**2)
+        self._teaching = 0.0
         self.accepted_s = float('nan')
         self.refused_since_s = float('nan')
         self._s = np.zeros(7)
@@ -93,7 +96,7 @@ class ErrorStateFilter:
         self._work = np.zeros((12, ERRORS))
         self._h = np.zeros((6, ERRORS))
         self._nu = np.zeros(6)
-        self._drift = np.zeros(6)
+        self._drift = np.zeros(7)
         self._still = np.zeros(6)
         self._out = np.zeros(29)
         self._gain = np.zeros((ERRORS, 6))
@@ -214,7 +217,7 @@ class ErrorStateFilter:
         options = self._options
         options[0] = np.inf
         options[1], options[2] = self.offset
-        options[3] = 1.0
+        options[3] = self._teaching
         imu_noise(self._r, self._noise, self._imu_variance, dt, self._imu_noise, self._common)
         correct(self.p, self._h, self._nu, self._imu_noise, self._common, self._still, options,
                 self._lag, self.imu_gain, self._out)
@@ -259,13 +262,13 @@ class ErrorStateFilter:
         variance = self.offset[1]
         if not math.isnan(self.accepted_s):
             variance += OFFSET_WALK_S_S05**2 * max(self.t - self.accepted_s, 0.0)
-        pose_residual(self.x, position, quaternion, self.body.pose_arm_m, self._h, self._nu,
-                      self._drift)
+        pose_residual(self.x, self.p, position, quaternion, self.body.pose_arm_m, self._h,
+                      self._nu, self._drift)
         options = self._options
         options[0] = self._gate
         options[1] = self.offset[0]
         options[2] = variance
-        options[3] = 1.0
+        self._teaching = options[3] = float(self._drift[6] > TEACHING_SHARE)
         correct(self.p, self._h, self._nu, self._pose_noise, self._nothing, self._drift, options,
                 self._lag, self._gain, self._out)
         self.nis = float(self._out[24])
