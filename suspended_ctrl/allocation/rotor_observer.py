@@ -8,11 +8,11 @@ no noise, with telemetry let in through a small gain only.
 import numpy as np
 
 from suspended_ctrl.physics.kernel import (
+    kernel,
     OUT_MATRIX,
     OUT_VECTOR,
     REAL,
     VECTOR,
-    kernel,
 )
 from suspended_ctrl.physics.rotor import lagged_speed
 from suspended_ctrl.physics.values import RotorSample
@@ -20,7 +20,7 @@ from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Rotors
 
 # Share of a telemetry error taken into the model each sample: 1 % noise comes through at 0.1 %,
-# while a lag known wrong by a fifth leaves 10 % of a step's size for less than a tenth of a second.
+# while a lag known wrong by a fifth leaves 10 % of a step's size for under a tenth of a second.
 _GAIN = 0.03
 # A rotor counts as not following when it is off by this much for this many samples in a row:
 # beyond 6 sigma of 1 % noise at any speed, and what a lag 20 % wrong leaves of a full step.
@@ -39,7 +39,8 @@ def _at(t: float, times: Array, speeds: Array) -> Array:
     while k < last - 1 and times[k + 1] < t:
         k += 1
     span = times[k + 1] - times[k]
-    share = 1.0 if span <= 0.0 else min(max((t - times[k]) / span, 0.0), 1.0)
+    # Before the first step there are no rows: times of minus infinity.
+    share = min(max((t - times[k]) / span, 0.0), 1.0) if 0.0 < span < np.inf else 1.0
     for i in range(out.shape[0]):
         out[i] = speeds[k, i] + share * (speeds[k + 1, i] - speeds[k, i])
     return out
@@ -95,7 +96,7 @@ class RotorObserver:
         self._speeds[-1] = self.speed_rad_s
 
     def correct(self, sample: RotorSample) -> None:
-        """Let telemetry in, and judge by it who follows; samples that are not finite are dropped."""
+        """Let telemetry in, judge by it who follows; samples that are not finite are dropped."""
         measured = np.asarray(sample.speed_rad_s, dtype=float)
         if measured.shape != self.speed_rad_s.shape or not np.isfinite(measured).all():
             return
