@@ -20,7 +20,7 @@ MISSIONS = ('panel_pass_1p0', 'four_stations')
 
 
 def timing(owner: Any, name: str) -> list[float]:
-    """Put a stopwatch on a method of one object; its thread's seconds go into the list returned."""
+    """Put a stopwatch on a method of one object; its seconds of CPU go into the list returned."""
     spent: list[float] = []
     inner: Callable[..., Any] = getattr(owner, name)
 

@@ -112,6 +112,7 @@ class ControlLoop:
         t : float
             Now, s.
         inputs : LoopInputs
+            What came since the last tick.
 
         Returns
         -------

@@ -1,15 +1,16 @@
-"""Plans of the carrier: what is asked for, the planner that answers, and how a plan is followed."""
+"""Plans of the carrier: what is asked for, the planner that answers, how a plan is followed."""
 
 from dataclasses import dataclass
 
 import numpy as np
 
+from suspended_ctrl.allocation.axis_course import axis_course
 from suspended_ctrl.allocation.carrier_trail import SHARE
 from suspended_ctrl.allocation.horizon_problem import (
     BLOCKS_S,
-    HorizonMaps,
     build_horizon_problem,
     horizon_maps,
+    HorizonMaps,
 )
 from suspended_ctrl.physics.values import CarrierPlan
 from suspended_ctrl.qp import CompiledQp
@@ -18,6 +19,9 @@ from suspended_ctrl.rig.rig import Rig
 
 PERIOD_S = 0.1
 HORIZON_S = frozen(np.cumsum(BLOCKS_S))
+_TIME_S = frozen(np.concatenate(([0.0], HORIZON_S)))
+# Solves a plan: one, and one that knows how the axis' limits bend its lag.
+_PASSES = 2
 # Room left at the ends of travel for what the solver and the readings round.
 _TRAVEL_ROOM_M = 1e-3
 
@@ -31,7 +35,7 @@ class PlanRequest:
     ----------
     effect_s : float
         When the plan takes effect: one period after the state it starts from.
-    axis_m, setpoint_m, setpoint_speed_m_s : ndarray, shape (k,)
+    axis_m, axis_speed_m_s, setpoint_m, setpoint_speed_m_s : ndarray, shape (k,)
         Expected then.
     wanted_m : ndarray, shape (h, k)
         Readings from which the tether alone gives what the reference needs, ``HORIZON_S`` after.
@@ -40,6 +44,7 @@ class PlanRequest:
 
     effect_s: float
     axis_m: Array
+    axis_speed_m_s: Array
     setpoint_m: Array
     setpoint_speed_m_s: Array
     wanted_m: Array
@@ -103,6 +108,7 @@ class CarrierPlanner:
         Parameters
         ----------
         request : PlanRequest
+            Where the axes are, and where they are wanted.
 
         Returns
         -------
@@ -117,36 +123,44 @@ class CarrierPlanner:
             columns.append(column)
             failure = failure or fault
         stacked = np.stack(columns, axis=-1)
-        time = np.concatenate(([0.0], HORIZON_S))
-        return SetpointPlan(request.effect_s, frozen(time), frozen(stacked[0]), frozen(stacked[1]),
+        return SetpointPlan(request.effect_s, _TIME_S, frozen(stacked[0]), frozen(stacked[1]),
                             frozen(stacked[2]), frozen(stacked[3]), failure)
 
     def _planned(self, request: PlanRequest, axis: int) -> tuple[Array, str | None]:
-        """Axis, its speed, setpoint, its speed at the start and the block ends, shape (4, h + 1)."""
+        """Axis, its speed, setpoint, its speed, at start and block ends, shape (4, h + 1)."""
         carrier = self._carrier
         time_constant = float(carrier.time_constant_s[axis])
         maps = self._maps[time_constant]
         most = SHARE * carrier.acceleration_max_m_s2[axis]
         start = np.array([request.axis_m[axis], request.setpoint_m[axis],
                           request.setpoint_speed_m_s[axis]])
-        solution = self._problems[axis].solve({
-            'wanted': request.wanted_m[:, axis], 'start': start,
+        limits = {
+            'start': start, 'speed': SHARE * carrier.speed_max_m_s[axis],
             'travel': [carrier.min_m[axis] + _TRAVEL_ROOM_M, carrier.max_m[axis] - _TRAVEL_ROOM_M],
-            'speed': SHARE * carrier.speed_max_m_s[axis], 'acceleration_most': most})
-        if solution.optimal:
-            acceleration, failure = solution['acceleration'], None
-        else:
-            acceleration = _braking(start[2], most)
-            failure = f'{carrier.axes[axis]}: {solution.status.value}'
-        position = maps.axis_from_start @ start + maps.axis_from_acceleration @ acceleration
-        setpoint = (maps.setpoint_from_start @ start
-                    + maps.setpoint_from_acceleration @ acceleration)
-        speed = maps.speed_from_start @ start + maps.speed_from_acceleration @ acceleration
-        position = np.concatenate((start[:1], position))
-        setpoint = np.concatenate((start[1:2], setpoint))
-        velocity = (setpoint - position) / time_constant
-        return (np.stack((position, velocity, setpoint, np.concatenate((start[2:], speed)))),
-                failure)
+            'acceleration_most': most}
+        course = setpoint = speed = np.zeros(0)
+        shift = np.zeros(len(BLOCKS_S))
+        failure = None
+        for _ in range(_PASSES):
+            solution = self._problems[axis].solve(
+                {'wanted': request.wanted_m[:, axis] - shift, **limits})
+            if solution.optimal:
+                acceleration = solution['acceleration']
+            else:
+                acceleration = _braking(start[2], most)
+                failure = f'{carrier.axes[axis]}: {solution.status.value}'
+            setpoint = np.append(start[1], maps.setpoint_from_start @ start
+                                 + maps.setpoint_from_acceleration @ acceleration)
+            speed = np.append(start[2], maps.speed_from_start @ start
+                              + maps.speed_from_acceleration @ acceleration)
+            course = axis_course(start[0], float(request.axis_speed_m_s[axis]), _TIME_S, setpoint,
+                                 speed, time_constant, carrier.speed_max_m_s[axis],
+                                 carrier.acceleration_max_m_s2[axis])
+            # Inside its own limits an axis lags by more than its time constant: the next pass
+            # allows for it.
+            shift = course[0, 1:] - (maps.axis_from_start @ start
+                                     + maps.axis_from_acceleration @ acceleration)
+        return np.stack((course[0], course[1], setpoint, speed)), failure
 
 
 def _braking(speed: float, most: float) -> Array:

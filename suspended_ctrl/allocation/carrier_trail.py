@@ -3,7 +3,7 @@
 import numpy as np
 
 from suspended_ctrl.physics.equilibrium import anchor_at_zero, equilibrium
-from suspended_ctrl.physics.kernel import OUT_MATRIX, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, OUT_MATRIX, REAL, VECTOR
 from suspended_ctrl.physics.loaded_body import loaded_body
 from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Rig
@@ -20,7 +20,7 @@ def _shape(position: Array, velocity: Array, goal: Array, dt: float, speed_max: 
     out = np.empty((2, count))
     for i in range(count):
         gap = goal[i] - position[i]
-        # Half a tick of braking less than the continuous rule keeps the last step from overshooting.
+        # Half a tick of braking less than the continuous rule, or the last step overshoots.
         step = acceleration_max[i] * dt
         stoppable = np.sqrt(2.0 * acceleration_max[i] * abs(gap) + 0.25 * step * step) - 0.5 * step
         limit = min(speed_max[i], stoppable)
@@ -79,6 +79,7 @@ class CarrierTrail:
         t : float
             Now, s.
         goal : ndarray, shape (k,)
+            Axis readings to go to, m.
 
         Returns
         -------

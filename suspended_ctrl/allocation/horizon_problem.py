@@ -2,9 +2,9 @@
 The carrier's plan for one axis over a horizon, as a reader of cvxpy sees it.
 
 Seen from the wrench that the reference needs, an axis has at every moment a place from which the
-tether alone would give it; what is missing to that place the rotors must hold by force. The problem
-moves the axis' setpoint so that the square of that force, over time, becomes least. About the
-vertical the axes do not influence one another, so each has a problem of its own.
+tether alone would give it; what is missing to that place the rotors must hold by force. The
+problem moves the axis' setpoint so that the square of that force, over time, becomes least. About
+the vertical the axes do not influence one another, so each has a problem of its own.
 
 The setpoint's acceleration is constant over each block; setpoint and axis then follow exactly:
 ``c' = v``, ``v' = u``, ``p' = (c - p) / T``.
@@ -58,6 +58,7 @@ def horizon_maps(time_constant_s: float, blocks_s: Array = BLOCKS_S) -> HorizonM
     time_constant_s : float
         Lag of the axis behind its setpoint.
     blocks_s : ndarray, shape (h,)
+        Length of each block.
 
     Returns
     -------
@@ -92,7 +93,9 @@ def build_horizon_problem(maps: HorizonMaps, blocks_s: Array = BLOCKS_S) -> cp.P
     Parameters
     ----------
     maps : HorizonMaps
+        From ``horizon_maps``.
     blocks_s : ndarray, shape (h,)
+        Length of each block.
 
     Returns
     -------

@@ -3,22 +3,25 @@
 import numpy as np
 
 from suspended_ctrl.allocation.carrier_plan import (
+    CarrierPlanner,
     HORIZON_S,
     PERIOD_S,
-    CarrierPlanner,
     PlanRequest,
     SetpointPlan,
 )
 from suspended_ctrl.allocation.priority_qp import RotorShare
 from suspended_ctrl.allocation.values import Allocation, AllocationInputs
 from suspended_ctrl.allocation.wanted_anchor import wanted_anchor
-from suspended_ctrl.physics.reference import Reference, held
+from suspended_ctrl.physics.carrier import carrier_step
+from suspended_ctrl.physics.reference import held, Reference
 from suspended_ctrl.physics.values import CarrierPlan
 from suspended_ctrl.rig.frozen import Array, frozen
 from suspended_ctrl.rig.rig import Rig
 
 # A plan follows the disturbance more slowly than the estimator's noise comes and goes.
 _DISTURBANCE_S = 0.5
+# Steps in which the axes are followed to the moment a plan takes effect.
+_STEPS = 5
 
 
 class HorizonQp:
@@ -57,6 +60,7 @@ class HorizonQp:
         t : float
             Now, s.
         inputs : AllocationInputs
+            What a strategy sees in one tick.
 
         Returns
         -------
@@ -99,7 +103,7 @@ class HorizonQp:
 
     def plan_request(self, t: float) -> PlanRequest | None:
         """
-        What to plan from now, once a period.
+        Say what to plan from now, once a period.
 
         Parameters
         ----------
@@ -116,14 +120,22 @@ class HorizonQp:
             return None
         self._due_s = t + PERIOD_S
         effect = t + PERIOD_S
-        carrier, seen = self.rig.carrier, self._seen
-        setpoint, speed = self._plan.setpoint_at(effect)
-        # Meanwhile the axis follows setpoints already decided; their middle stands for them.
-        midway, _ = self._plan.setpoint_at(t + 0.5 * PERIOD_S)
-        axis = midway + (seen.anchor_position_m - midway) * np.exp(
-            -PERIOD_S / carrier.time_constant_s)
-        return PlanRequest(effect, frozen(axis), frozen(setpoint), frozen(speed),
-                           frozen(self._wanted(effect, seen)))
+        seen = self._seen
+        axis, axis_speed, setpoint, speed = self._expected(t, effect)
+        return PlanRequest(effect, frozen(axis), frozen(axis_speed), frozen(setpoint),
+                           frozen(speed), frozen(self._wanted(effect, seen)))
+
+    def _expected(self, t: float, effect: float) -> tuple[Array, Array, Array, Array]:
+        """Axes, their speeds, setpoints, their speeds at ``effect``, by the plan in force."""
+        assert self._plan is not None
+        assert self._seen is not None
+        carrier = self.rig.carrier
+        place, speed = self._seen.anchor_position_m, self._seen.anchor_velocity_m_s
+        dt = (effect - t) / _STEPS
+        for step in range(_STEPS):
+            target, _ = self._plan.setpoint_at(t + (step + 0.5) * dt)
+            place, speed = carrier_step(carrier, place, speed, target, dt)
+        return place, speed, *self._plan.setpoint_at(effect)
 
     def _wanted(self, effect: float, seen: AllocationInputs) -> Array:
         reference = seen.reference

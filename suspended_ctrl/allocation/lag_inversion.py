@@ -1,8 +1,8 @@
-"""Commands that make rotors reach a target sooner than their lag would, and what can be reached."""
+"""Commands that make rotors reach a target sooner than their lag would; what can be reached."""
 
 import numpy as np
 
-from suspended_ctrl.physics.kernel import FLAGS, OUT_MATRIX, OUT_VECTOR, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import FLAGS, kernel, OUT_MATRIX, OUT_VECTOR, REAL, VECTOR
 from suspended_ctrl.rig.frozen import Array
 
 
@@ -19,6 +19,7 @@ def reachable_speed(speed: Array, least: Array, most: Array, reversible: Array,
     least, most : ndarray, shape (n,)
         Least and greatest magnitude.
     reversible : ndarray of bool, shape (n,)
+        Which rotors turn both ways.
     gain : float
         At least 1.
 

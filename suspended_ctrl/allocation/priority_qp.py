@@ -4,7 +4,7 @@ import numpy as np
 
 from suspended_ctrl.allocation.carrier_trail import CarrierTrail
 from suspended_ctrl.allocation.pseudo_inverse import PseudoInverse
-from suspended_ctrl.allocation.rotor_qp import RotorQp, rotor_wrench_wanted
+from suspended_ctrl.allocation.rotor_qp import rotor_wrench_wanted, RotorQp
 from suspended_ctrl.allocation.spin_sense import SpinSense
 from suspended_ctrl.allocation.values import Allocation, AllocationInputs
 from suspended_ctrl.physics.rotor import RotorModel
@@ -28,7 +28,8 @@ class RotorShare:
         self._sense = SpinSense(rig.rotors, self.model)
         self._spare = PseudoInverse(rig)
 
-    def thrust(self, t: float, inputs: AllocationInputs) -> tuple[Array, str | None, dict[str, float]]:
+    def thrust(self, t: float,
+               inputs: AllocationInputs) -> tuple[Array, str | None, dict[str, float]]:
         """
         Solve for this tick's thrusts.
 
@@ -81,6 +82,7 @@ class PriorityQp:
         t : float
             Now, s.
         inputs : AllocationInputs
+            What a strategy sees in one tick.
 
         Returns
         -------

@@ -20,7 +20,8 @@ class PseudoInverse:
     """
 
     def __init__(self, rig: Rig) -> None:
-        self._wrench_per_thrust = RotorModel(rig.rotors, rig.body.centre_of_mass_m).wrench_per_thrust
+        model = RotorModel(rig.rotors, rig.body.centre_of_mass_m)
+        self._wrench_per_thrust = model.wrench_per_thrust
         self._everything = np.ones(rig.rotors.count, dtype=bool)
         self._healthy = self._everything
         self._inverse = np.linalg.pinv(self._wrench_per_thrust)
@@ -34,6 +35,7 @@ class PseudoInverse:
         t : float
             Now, s.
         inputs : AllocationInputs
+            What a strategy sees in one tick.
 
         Returns
         -------
@@ -53,6 +55,7 @@ class PseudoInverse:
         wrench : ndarray, shape (6,)
             Wanted of the rotors.
         lower_n, upper_n : ndarray, shape (n,)
+            Reachable thrust.
         healthy : ndarray of bool, shape (n,)
             The others give what their bounds say.
 

@@ -1,5 +1,5 @@
 """
-The rotor problem: thrusts for a wrench, inside what each rotor can reach, as a reader of cvxpy sees it.
+The rotor problem as a reader of cvxpy sees it: thrusts for a wrench, inside each rotor's reach.
 
 The wanted rotor wrench is split into what must be kept (torque, force along the tether) and the
 force across the tether, of which the problem may take any share from nothing to all along its own
@@ -51,6 +51,7 @@ def build_rotor_problem(wrench_per_thrust: Array,
     wrench_per_thrust : ndarray, shape (6, n)
         Force and torque of one newton from each rotor.
     weights : RotorWeights, optional
+        Of the terms of the objective.
 
     Returns
     -------

@@ -4,9 +4,9 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from suspended_ctrl.allocation.rotor_problem import RotorWeights, build_rotor_problem
+from suspended_ctrl.allocation.rotor_problem import build_rotor_problem, RotorWeights
 from suspended_ctrl.allocation.values import AllocationInputs
-from suspended_ctrl.physics.kernel import OUT_VECTOR, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, OUT_VECTOR, VECTOR
 from suspended_ctrl.qp import CompiledQp, Solution
 from suspended_ctrl.rig.frozen import Array
 
@@ -82,6 +82,7 @@ class RotorQp:
         along : ndarray, shape (3,)
             Unit vector along the tether.
         lower_n, upper_n, rest_n : ndarray, shape (n,)
+            Reachable thrust, and the thrust of least effort.
 
         Returns
         -------

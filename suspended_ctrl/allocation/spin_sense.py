@@ -2,9 +2,9 @@
 Which way each reversible rotor turns.
 
 A reversible rotor cannot hold a speed below its least magnitude, so each has a sense at any time
-and its thrust stays on that side: ``[T(min), T(max)]`` or its mirror image. A sense is changed only
-when it pays: when the problem with the band left out costs less by more than a threshold for longer
-than a dwell, and not again for a while.
+and its thrust stays on that side: ``[T(min), T(max)]`` or its mirror image. A sense is changed
+only when it pays: when the problem with the band left out costs less by more than a threshold for
+longer than a dwell, and not again for a while.
 """
 
 import numpy as np
@@ -64,10 +64,11 @@ class SpinSense:
         return *self._side(self.sense, inputs), rest
 
     def _side(self, sense: Array, inputs: AllocationInputs) -> tuple[Array, Array]:
-        """Cut the bounds to the side of ``sense``; what cannot be reached yet, as near as it can."""
+        """Cut the bounds to the side of ``sense``; what is out of reach yet, as near as it can."""
         lower, upper = inputs.thrust_lower_n, inputs.thrust_upper_n
         cut = self._reversible & inputs.healthy
-        low = np.where(cut & (sense > 0.0), np.minimum(np.maximum(lower, self._least), upper), lower)
+        low = np.where(cut & (sense > 0.0), np.minimum(np.maximum(lower, self._least), upper),
+                       lower)
         high = np.where(cut & (sense < 0.0), np.maximum(np.minimum(upper, -self._least), lower),
                         upper)
         return low, high

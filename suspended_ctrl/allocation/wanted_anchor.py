@@ -3,7 +3,7 @@
 import numpy as np
 
 from suspended_ctrl.physics.constants import GRAVITY_M_S2 as GRAVITY
-from suspended_ctrl.physics.kernel import MATRIX, OUT_MATRIX, REAL, VECTOR, kernel
+from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, REAL, VECTOR
 from suspended_ctrl.physics.rotation import rotate
 from suspended_ctrl.rig.frozen import Array
 

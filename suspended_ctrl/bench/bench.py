@@ -99,7 +99,7 @@ class Bench:
 
     @property
     def payload(self) -> Payload:
-        """What truly hangs on the platform."""
+        """Payload that truly hangs on the platform."""
         return self._plant.payload
 
     @property
@@ -195,7 +195,7 @@ class Bench:
         return accepted
 
     def samples(self, until_s: float) -> list[BenchSample]:
-        """Samples that have arrived by ``until_s``, in order of arrival, each once."""
+        """Take the samples that have arrived by ``until_s``, in order of arrival, each once."""
         arrived = self._delivery.until(until_s)
         return [] if 'rig_bench' in self.silent_parts(until_s) else arrived
 

@@ -68,7 +68,7 @@ class Condition:
         return cls(np.full(count, k.RUNS), np.ones(count), np.full(axes, k.FOLLOWS),
                    np.zeros(axes))
 
-    def filter(self, topic: str, change: Filter) -> None:
+    def filter(self, topic: str, change: Filter) -> None:  # noqa: A003
         """Add a filter on the samples of ``topic``."""
         self.filters.setdefault(topic, []).append(change)
 

@@ -88,6 +88,7 @@ class Channel:
         stamp_s : float
             What the sensor's clock calls it.
         delivery : Delivery
+            Where it goes.
 
         """
         self._taken += 1

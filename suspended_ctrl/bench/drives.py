@@ -22,6 +22,7 @@ def take_speeds(speed: Array, limits: Array, target: Array) -> bool:
     Parameters
     ----------
     speed : ndarray, shape (n,)
+        As commanded, rad/s.
     limits : ndarray, shape (n, 3)
         From ``rotor_limits``.
     target : ndarray, shape (n,)
@@ -49,6 +50,7 @@ def take_positions(position: Array, velocity: Array, limits: Array, target: Arra
     Parameters
     ----------
     position, velocity : ndarray, shape (k,)
+        As commanded, m and m/s.
     limits : ndarray, shape (k, 2)
         From ``axis_limits``.
     target : ndarray, shape (k,)
@@ -76,7 +78,7 @@ def rotor_limits(rotors: Rotors) -> Array:
 
 
 def axis_limits(carrier: Carrier) -> Array:
-    """Ends of travel, shape (k, 2), m."""
+    """Return the ends of travel, shape (k, 2), m."""
     return np.ascontiguousarray(np.column_stack((carrier.min_m, carrier.max_m)))
 
 

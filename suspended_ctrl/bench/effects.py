@@ -123,6 +123,7 @@ class FaultSchedule:
         Parameters
         ----------
         t_s : float
+            The moment.
         condition : Condition
             Without a fault.
 

@@ -119,7 +119,9 @@ def turn_rotors(rotor: Array, rotor_fixed: Array, curve_square: Array, thrusts: 
     rotor_fixed, curve_square, thrusts : ndarray
         As for ``apply_forces``.
     rate_body : ndarray, shape (3,)
+        Of the platform, rad/s.
     step : float
+        Its length, s.
     switch : float
         When the target becomes NEXT; not in this step if beyond it.
 

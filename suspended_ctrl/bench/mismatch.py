@@ -125,9 +125,11 @@ def draw_mismatch(rig: Rig, rng: np.random.Generator,
     Parameters
     ----------
     rig : Rig
+        As its file says.
     rng : Generator
         As many numbers are taken from it whatever the spread.
     spread : MismatchSpread, optional
+        How wide to draw.
 
     Returns
     -------

@@ -52,6 +52,7 @@ def build_model(rig: Rig, payload: Payload, step_s: float) -> mujoco.MjModel:
     payload : Payload
         A point mass on the platform; none at zero mass.
     step_s : float
+        Of the integration.
 
     Returns
     -------
@@ -85,7 +86,9 @@ def settled(model: mujoco.MjModel, anchor_map_m: Array) -> Array:
     Parameters
     ----------
     model : MjModel
+        From ``build_model``.
     anchor_map_m : ndarray, shape (3,)
+        Where the anchor stands.
 
     Returns
     -------

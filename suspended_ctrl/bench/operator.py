@@ -58,7 +58,9 @@ class Operator:
         t : float
             Now, s.
         safety : SafetyOutputs or None
+            The supervisor's, None before the first.
         estimate : Estimate or None
+            None while there is none.
 
         Returns
         -------

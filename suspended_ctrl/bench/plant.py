@@ -101,7 +101,7 @@ class Plant:
 
     @property
     def steps(self) -> int:
-        """Steps made."""
+        """How many steps were made."""
         return self._steps
 
     def command_rotors(self, t_s: float, speed_rad_s: object) -> bool:

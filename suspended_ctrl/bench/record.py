@@ -62,8 +62,11 @@ class Recorder:
         t : float
             Now, s.
         inputs : LoopInputs
+            What the loop was given.
         outputs : LoopOutputs
+            What it gave.
         truth : Truth
+            The plant as the tick begins.
         spent_s : float
             CPU time of the tick.
 
@@ -138,6 +141,7 @@ class Recorder:
         trouble : str or None
             Why the run ended before its path did.
         faults : sequence of FaultEvent
+            What was injected, and when.
         wall_s : float
             Wall-clock time of the run.
 

@@ -47,7 +47,9 @@ def imu_reading(qpos: Array, qvel: Array, before: Array, place: Array, turn: Arr
     place, turn : ndarray, shapes (3,), (4,)
         Of the sensor in ``base_link``.
     step : float
+        Its length, s.
     bias, noise : ndarray, shape (6,)
+        Of rate (rad/s), then force (m/s^2), added.
 
     Returns
     -------

@@ -162,9 +162,13 @@ def build_channels(rig: Rig, plant: Plant, streams: Streams,
     Parameters
     ----------
     rig : Rig
+        The true one.
     plant : Plant
+        What is measured.
     streams : Streams
+        Of random numbers, one a sensor.
     button : EmergencyStopButton
+        The emergency stop.
 
     Returns
     -------

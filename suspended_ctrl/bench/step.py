@@ -18,6 +18,7 @@ def plant_step_s(rig: Rig) -> float:
     Parameters
     ----------
     rig : Rig
+        The hardware.
 
     Returns
     -------

@@ -112,9 +112,9 @@ def _checked(problem: cp.Problem) -> None:
     if problem.is_mixed_integer():
         raise NotQpError('the problem has integer variables')
     if not problem.is_dcp():
-        raise NotQpError('the problem is not convex by cvxpy\'s rules')
+        raise NotQpError("the problem is not convex by cvxpy's rules")
     if not problem.is_dcp(dpp=True):
-        raise NotDppError('the problem does not keep cvxpy\'s rules for parameters (DPP)')
+        raise NotDppError("the problem does not keep cvxpy's rules for parameters (DPP)")
     if not problem.is_qp():
         raise NotQpError('the problem has terms that no quadratic programme can hold')
 

@@ -1,7 +1,7 @@
 """A cvxpy problem compiled for run time."""
 
-import math
 from collections.abc import Mapping
+import math
 from typing import Any
 
 import cvxpy as cp
@@ -143,7 +143,7 @@ class CompiledQp:
         condense_quadratic(self._row, self._column, view['quadratic'], view['basis'],
                            self._quadratic)
 
-    def set(self, values: Mapping[str, object]) -> None:
+    def set(self, values: Mapping[str, object]) -> None:  # noqa: A003
         """
         Give parameters their values; those not named keep theirs.
 

@@ -1,17 +1,17 @@
 """What is evaluated at every solve, compiled: parameters into matrices, and residuals."""
 
-import numpy as np
 from numba import types
+import numpy as np
 
 from suspended_ctrl.physics.kernel import (
     INTEGER,
+    kernel,
     MATRIX,
     OUT_MATRIX,
     OUT_VECTOR,
     REAL,
     TRUTH,
     VECTOR,
-    kernel,
 )
 from suspended_ctrl.rig.frozen import Array
 
@@ -27,11 +27,13 @@ def evaluate(theta: Array, entry: Array, start: Array, column: Array, slope: Arr
     Parameters
     ----------
     theta : ndarray, shape (m,)
+        Values of all parameters.
     entry : ndarray of int, shape (v,)
         Places in ``out`` that vary.
     start, column, slope : ndarray
         Compressed rows of their slopes: (v + 1,), (nnz,), (nnz,).
     constant : ndarray, shape (v,)
+        What does not depend on them.
     out : ndarray, shape (total,)
         Changed in place.
 
@@ -118,6 +120,7 @@ def residuals(quadratic: Array, linear: Array, matrix: Array, lower: Array, uppe
     lower, upper : ndarray, shape (n + k,)
         Of x, then of A x.
     x : ndarray, shape (n,)
+        The answer.
     dual : ndarray, shape (n + k,)
         Positive at upper bounds, negative at lower.
 

@@ -1,10 +1,10 @@
 """
 Elimination of the variables that cvxpy adds, where an equality defines them.
 
-cvxpy writes ``sum_squares(D x - d)`` as ``y'y`` with ``y = D x - d``. Such a y is a function of the
-author's variables and is put back in: ``z = E w + e`` with E and e affine in the parameters, so
-that ``P_w = E'PE``, ``q_w = E'(P e + q)``. What is defined by an inequality (the bound behind an
-absolute value) stays a variable.
+cvxpy writes ``sum_squares(D x - d)`` as ``y'y`` with ``y = D x - d``. Such a y is a function of
+the author's variables and is put back in: ``z = E w + e`` with E and e affine in the parameters,
+so that ``P_w = E'PE``, ``q_w = E'(P e + q)``. What is defined by an inequality (the bound behind
+an absolute value) stays a variable.
 """
 
 from dataclasses import dataclass
@@ -13,7 +13,6 @@ import numpy as np
 from scipy import sparse
 
 from suspended_ctrl.qp.canonical import Affine, Canonical
-from suspended_ctrl.rig.frozen import Array
 
 NO_BOUND = 1e30
 
@@ -94,6 +93,7 @@ def reduced(problem: Canonical) -> Reduced:
     Parameters
     ----------
     problem : Canonical
+        As it was written.
 
     Returns
     -------
@@ -201,7 +201,7 @@ class _Sides:
 
 
 class _Rows:
-    """Inequality rows sorted into bounds, two-sided rows, one-sided rows and rows without variables."""
+    """Inequality rows sorted into bounds, two-sided, one-sided, and those without variables."""
 
     def __init__(self, matrix: Affine, side: Affine, lower: _Sides, upper: _Sides) -> None:
         self.matrix = matrix

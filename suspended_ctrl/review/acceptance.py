@@ -47,7 +47,7 @@ class Criterion:
 
 
 def figure(metrics: Mapping[str, Any], key: str) -> float | None:
-    """Number at a dotted key; None where there is none."""
+    """Look up the number at a dotted key; None where there is none."""
     value: Any = metrics
     for part in key.split('.'):
         if not isinstance(value, Mapping) or part not in value:
@@ -66,6 +66,7 @@ def judged(metrics: Mapping[str, Any], criteria: Mapping[str, Bound],
     Parameters
     ----------
     metrics : mapping
+        Figures as in metrics.json.
     criteria : mapping of str to bound
         A number is an upper bound; ``{'at_least': x}``, or anything with ``at_least``, is a
         lower one.

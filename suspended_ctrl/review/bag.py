@@ -138,6 +138,7 @@ def write_bag(log: RunLog, names: JointNames, path: Path, namespace: str = '') -
     log : RunLog
         Its times are host times from zero on.
     names : JointNames
+        Of the rig.
     path : Path
         The folder, which must not exist.
     namespace : str

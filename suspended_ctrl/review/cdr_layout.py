@@ -145,7 +145,7 @@ class Layout:
         """``count`` copies of the message, shape (count, size), to be filled in."""
         return np.tile(np.frombuffer(self._raw, dtype=np.uint8), (count, 1))
 
-    def set(self, rows: np.ndarray, path: str, numbers: np.ndarray) -> None:
+    def set(self, rows: np.ndarray, path: str, numbers: np.ndarray) -> None:  # noqa: A003
         """Put one leaf's numbers, shape (n,) or (n, count), into rows of bytes."""
         leaf = self.leaves[path]
         packed = np.ascontiguousarray(numbers, dtype=leaf.kind).reshape(len(rows), -1)

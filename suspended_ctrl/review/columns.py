@@ -90,8 +90,11 @@ def decode(topic: Topic, layout: Layout, rows: np.ndarray, names: JointNames) ->
     topic : Topic
         One whose value type is in ``LEAVES``.
     layout : Layout
+        Of every message.
     rows : ndarray of uint8, shape (n, size)
+        The messages.
     names : JointNames
+        Of the rig.
 
     Returns
     -------
@@ -153,9 +156,11 @@ def encode(topic: Topic, layout: Layout, columns: dict[str, Array]) -> np.ndarra
     Parameters
     ----------
     topic : Topic
+        One whose value type is in ``LEAVES``.
     layout : Layout
         Of one message with the joints in the rig's order.
     columns : dict of str to ndarray, shape (n, ...)
+        By field.
 
     Returns
     -------

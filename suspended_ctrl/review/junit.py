@@ -16,6 +16,7 @@ def junit_xml(assessment: Assessment) -> str:
     Parameters
     ----------
     assessment : Assessment
+        Its figures and verdict.
 
     Returns
     -------

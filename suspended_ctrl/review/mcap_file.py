@@ -104,6 +104,7 @@ class McapWriter:
         Parameters
         ----------
         topic, message_type : str
+            Its name and its type.
         definition : str
             Text of the message type's definition with those it needs (``ros2msg``).
         qos : str

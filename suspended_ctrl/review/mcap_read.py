@@ -92,7 +92,9 @@ def metadata(path: Path, name: str) -> dict[str, str]:
     Parameters
     ----------
     path : Path
+        Of the file.
     name : str
+        Of the texts.
 
     Returns
     -------

@@ -76,7 +76,9 @@ def assess(log: RunLog, rig: Rig, criteria: Mapping[str, Bound] | None = None) -
     Parameters
     ----------
     log : RunLog
+        The run.
     rig : Rig
+        The hardware.
     criteria : mapping of str to bound, optional
         See ``acceptance.judged``.
 

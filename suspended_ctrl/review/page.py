@@ -34,8 +34,11 @@ def render_page(log: RunLog, rig: Rig, assessment: Assessment) -> str:
     Parameters
     ----------
     log : RunLog
+        The run.
     rig : Rig
+        The hardware.
     assessment : Assessment
+        Its figures and verdict.
 
     Returns
     -------

@@ -18,6 +18,7 @@ def rig_facts(rig: Rig) -> list[tuple[str, str]]:
     Parameters
     ----------
     rig : Rig
+        The hardware.
 
     Returns
     -------

@@ -38,9 +38,11 @@ def interpolated(t: Array, times: Array, values: Array) -> Array:
     Parameters
     ----------
     t : ndarray, shape (m,)
+        Where to look.
     times : ndarray, shape (n,)
         Rising.
     values : ndarray, shape (n,) or (n, k)
+        At ``times``.
 
     Returns
     -------

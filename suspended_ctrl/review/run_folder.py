@@ -27,6 +27,7 @@ def check_out(out_dir: Path) -> None:
     Parameters
     ----------
     out_dir : Path
+        The run folder.
 
     Raises
     ------
@@ -59,10 +60,13 @@ def write_run(log: RunLog, rig: Rig, criteria: Mapping[str, Bound] | None, out_d
     Parameters
     ----------
     log : RunLog
+        The run.
     rig : Rig
+        The hardware.
     criteria : mapping of str to bound
         See ``acceptance.judged``; None for none.
     out_dir : Path
+        The run folder.
     recording : Path, optional
         A rosbag2 folder to move in as ``run/``, made while the run went on; without it the log is
         written there.

@@ -47,6 +47,7 @@ class Table(ABC):
         Parameters
         ----------
         name : str
+            Of the field.
 
         Returns
         -------

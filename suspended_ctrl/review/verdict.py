@@ -21,7 +21,9 @@ def print_verdict(assessment: Assessment, folder: Path, console: Console | None 
     Parameters
     ----------
     assessment : Assessment
+        Its figures and verdict.
     folder : Path
+        The run folder.
     console : Console, optional
         Standard output if left out.
 

@@ -4,7 +4,7 @@ from dataclasses import dataclass
 
 
 def plain(value: float, digits: int) -> str:
-    """Number with so many significant digits, large ones without an exponent."""
+    """Write a number with so many significant digits, large ones without an exponent."""
     text = f'{value:.{digits}g}'
     return f'{value:.0f}' if 'e' in text and abs(value) >= 1.0 else text
 

@@ -109,7 +109,7 @@ def quaternion_rate(q, w) -> np.ndarray:
 
 
 def newton_euler(rig: Rig, wrench):
-    """Derivative by this project's Newton-Euler equations; the state is of the centre of mass."""
+    """Take the derivative by this project's Newton-Euler equations, of the centre of mass."""
     body = rig.body
     inverse = np.ascontiguousarray(np.linalg.inv(body.inertia_kg_m2))
 
@@ -122,7 +122,7 @@ def newton_euler(rig: Rig, wrench):
 
 
 def by_pinocchio(rig: Rig, wrench):
-    """Derivative by pinocchio's articulated-body algorithm for a free flyer at the centre."""
+    """Take the derivative by pinocchio's articulated-body algorithm, free flyer at the centre."""
     body = rig.body
     model = pinocchio.Model()
     model.gravity.linear = np.array((0.0, 0.0, -G))

@@ -235,7 +235,7 @@ def test_files_that_cannot_be_read(given: str, allowed: str, tmp_path: Path) -> 
 
 
 def one_way(least: float, rows: list[str]) -> str:
-    """The text of a rig with rotors ``position, axis, spin``, all one-way from ``least`` on."""
+    """Text of a rig with rotors ``position, axis, spin``, all one-way from ``least`` on."""
     start, end = SHORT.index('  - name: r1'), SHORT.index('tether:')
     rotors = ''
     for i, row in enumerate(rows):

@@ -200,7 +200,7 @@ def test_found_by_name_path_and_folder(tmp_path: Path, monkeypatch: pytest.Monke
 
 
 def installed(tmp_path: Path, site: str) -> Path:
-    """A tree as installers leave it, with this package's module that finds the folder."""
+    """Tree as installers leave it, with this package's module that finds the folder."""
     source = Path(sys.modules['suspended_ctrl.rig.shared_files'].__file__ or '')
     package = tmp_path / site / 'suspended_ctrl' / 'rig'
     package.mkdir(parents=True)

@@ -84,7 +84,9 @@ def told(log: RunLog, rig: Rig) -> Story:
     Parameters
     ----------
     log : RunLog
+        The run.
     rig : Rig
+        The hardware.
 
     Returns
     -------

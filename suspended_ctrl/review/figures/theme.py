@@ -49,7 +49,7 @@ _FONTS = "system-ui, 'Segoe UI', Roboto, 'Helvetica Neue', Arial, 'DejaVu Sans',
 
 @contextmanager
 def themed(name: str) -> Iterator[None]:
-    """Looks of all figures; ``name`` makes a figure's identifiers its own, and the same always."""
+    """Give all figures their look; ``name`` makes identifiers a figure's own, always the same."""
     with rc_context({**_STYLE, 'svg.hashsalt': name}):
         yield
 
@@ -91,6 +91,7 @@ def svg_text(figure: Figure, name: str, title: str, description: str) -> str:
     Parameters
     ----------
     figure : Figure
+        Drawn already.
     name : str
         Letters only; the figure's identifiers begin with it.
     title, description : str

@@ -12,6 +12,7 @@ def thinned(time: Array, series: Array, buckets: int = 700) -> tuple[Array, Arra
     Parameters
     ----------
     time, series : ndarray, shape (n,)
+        Rising, and the values then.
     buckets : int
         Stretches; the result has twice as many points at most.
 

@@ -46,6 +46,7 @@ def time_figure(story: Story, criteria: Criteria) -> Figure:
     Parameters
     ----------
     story : Story
+        The run's series.
     criteria : mapping of str to Criterion
         By key; their bounds are drawn.
 

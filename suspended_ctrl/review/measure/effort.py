@@ -89,7 +89,9 @@ def tensions(log: RunLog, rig: Rig) -> tuple[Array, Array]:
     Parameters
     ----------
     log : RunLog
+        The run.
     rig : Rig
+        The hardware.
 
     Returns
     -------

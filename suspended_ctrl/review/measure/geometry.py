@@ -18,6 +18,7 @@ def segments(points: Array) -> Array:
     Parameters
     ----------
     points : ndarray, shape (m, 3)
+        In order along the line.
 
     Returns
     -------

@@ -39,6 +39,7 @@ def integral(time_s: Array, rate: Array, on: np.ndarray) -> float | None:
     Parameters
     ----------
     time_s, rate : ndarray, shape (n,)
+        Rising, and the rate then.
     on : ndarray of bool, shape (n,)
         Which samples count.
 

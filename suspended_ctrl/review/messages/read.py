@@ -209,7 +209,7 @@ def read_motion(message: Any) -> PlatformState:
     velocity = rotate(quaternion, read_vector(twist.linear, 'linear velocity'))
     velocity.setflags(write=False)
     return PlatformState(read_stamp(message), read_vector(pose.position, 'position'), velocity,
-                  quaternion, read_vector(twist.angular, 'angular velocity'))
+                         quaternion, read_vector(twist.angular, 'angular velocity'))
 
 
 def read_odometry(message: Any, disturbance: Disturbance | None = None,
