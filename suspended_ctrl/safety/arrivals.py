@@ -99,7 +99,7 @@ class Arrivals:
         self.demand_stamp_s = 0.0
         self.demand_refused = False
         self.carrier_demand: tuple[Array, Array] | None = None
-        self.pressed = self.chain_gone = self.mission_gone = False
+        self.pressed = self._pressed_now = self.chain_gone = self.mission_gone = False
         self.load_n = 0.0
         self._handlers: dict[type, Callable[[float, Any], bool]] = {
             PoseSample: self._take_pose, ImuSample: self._take_imu,
@@ -126,12 +126,12 @@ class Arrivals:
         t : float
             Monotonic time of this step; arrivals later than that count as now.
         inputs : SafetyInputs
-            What is new since the last step.
         jump_s : float
             Step of the ROS clock against the monotonic clock since the last step.
 
         """
         self.now_s = inputs.now_s
+        self._pressed_now = False
         if abs(jump_s) > self._s.clock_jump_s:
             self.pose_stamp_s += jump_s  # its age is what it was
         handlers = self._handlers
@@ -252,7 +252,9 @@ class Arrivals:
         return True
 
     def _take_emergency_stop(self, at: float, message: EmergencyStop) -> bool:
-        self.pressed = message.pressed is not False  # whatever is not a plain false is a stop
+        # Whatever is not a plain false is a stop; one that is let go before the step still is.
+        self._pressed_now = self._pressed_now or message.pressed is not False
+        self.pressed = self._pressed_now
         self.at[rows.STOP_LINE] = at
         return True
 

@@ -49,7 +49,6 @@ def tolerates_rotor_loss(rig: Rig) -> bool:
     Parameters
     ----------
     rig : Rig
-        The hardware.
 
     Returns
     -------

@@ -113,3 +113,4 @@ def limit_table(rig: Rig, settings: SafetySettings) -> tuple[Limit, ...]:
     )
     assert tuple(row.name for row in rows[:len(JUDGED)]) == JUDGED
     return rows
+

@@ -120,7 +120,6 @@ class RotorWatch:
         Parameters
         ----------
         speed_rad_s : ndarray, shape (n,)
-            Of each rotor.
 
         Returns
         -------

@@ -160,7 +160,6 @@ class SafetySettings:
         Parameters
         ----------
         rig : Rig
-            The hardware.
         **changes : object
             Any attribute, instead of its default.
 

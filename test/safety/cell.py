@@ -157,5 +157,5 @@ class Cell:
 
 
 def without(rig: Rig, **sensors: None) -> Rig:
-    """Rig without some of its sensors."""
+    """The rig without some of its sensors."""
     return replace(rig, sensors=replace(rig.sensors, **sensors))

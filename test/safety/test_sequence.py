@@ -150,6 +150,22 @@ def test_trip_latches_until_reset_and_reset_does_not_restart(live):
     assert live.state == 'live'
 
 
+def test_emergency_stop_let_go_within_a_tick_still_stops(live):
+    live.extra = [EmergencyStop(True), EmergencyStop(False)]
+    live.tick()
+    assert live.state == 'tripped'
+    live.extra = []
+    live.tick()
+    assert live.zero()
+
+
+@pytest.mark.parametrize('content', [None, 1, 'false', np.bool_(True), float('nan')])
+def test_emergency_stop_message_that_is_no_plain_false_stops(live, content):
+    live.extra = [EmergencyStop(content)]
+    live.tick()
+    assert live.state == 'tripped'
+
+
 def test_emergency_stop_latches_without_power_too(cell):
     cell.extra = [EmergencyStop(True)]
     cell.tick()
