@@ -5,7 +5,6 @@ from dataclasses import dataclass
 import numpy as np
 
 from suspended_ctrl.estimation.settings import EstimatorSettings
-from suspended_ctrl.rig.constants import GRAVITY_M_S2
 from suspended_ctrl.physics.rotation import (
     conjugate,
     exponential,
@@ -13,6 +12,7 @@ from suspended_ctrl.physics.rotation import (
     multiply,
     normalised,
 )
+from suspended_ctrl.rig.constants import GRAVITY_M_S2
 from suspended_ctrl.rig.frozen import Array, frozen
 
 # A resting accelerometer reads one g give or take its bias and a coarse scale error.
@@ -34,6 +34,13 @@ class Alignment:
     position_map_m, quaternion_wxyz : ndarray
         Mean of the poses, of the marker body.
     imu_usable : bool
+    still : bool
+        False where stillness was not asked for.
+    mass_kg : float
+        What hangs on the tether, from the load cell, else from the stretch and the stiffness in
+        the rig file; nan if it could not be told.
+    rest_length_m : float
+        Of the tether, from its length and the load cell, else the weight in the rig file; or nan.
 
     """
 
@@ -41,7 +48,10 @@ class Alignment:
     message: str
     position_map_m: Array
     quaternion_wxyz: Array
-    imu_usable: bool
+    imu_usable: bool = True
+    still: bool = True
+    mass_kg: float = float('nan')
+    rest_length_m: float = float('nan')
 
 
 def align(settings: EstimatorSettings, stamps_s: Array, positions: Array, quaternions: Array,
@@ -87,9 +97,9 @@ def align(settings: EstimatorSettings, stamps_s: Array, positions: Array, quater
     if not still:
         return Alignment(False, f'hold still: moving at {np.linalg.norm(velocity):.3f} m/s and '
                          f'{np.linalg.norm(rate):.3f} rad/s, limits {settings.still_m_s} and '
-                         f'{settings.still_rad_s}', position, quaternion, False)
+                         f'{settings.still_rad_s}', position, quaternion, still=False)
     message = check_imu(settings, rate, rates, forces)
-    return Alignment(True, message, position, quaternion, not message)
+    return Alignment(True, message, position, quaternion, imu_usable=not message)
 
 
 def check_imu(settings: EstimatorSettings, rate: Array, rates: Array, forces: Array) -> str:

@@ -5,9 +5,10 @@ from dataclasses import dataclass
 import numpy as np
 
 from suspended_ctrl.estimation.dynamics import BODY
-from suspended_ctrl.rig.constants import GRAVITY_M_S2
+from suspended_ctrl.physics.loaded_body import loaded_body
 from suspended_ctrl.physics.rotor import RotorModel
 from suspended_ctrl.physics.values import Payload
+from suspended_ctrl.rig.constants import GRAVITY_M_S2
 from suspended_ctrl.rig.frozen import Array, frozen
 from suspended_ctrl.rig.rig import Rig
 
@@ -39,26 +40,15 @@ class BodyModel:
     payload: Payload
 
 
-def point_inertia(arm_m: Array, mass_kg: float) -> Array:
-    """Inertia matrix of a point mass at ``arm_m``, shape (3, 3), kg m^2 (Steiner's term)."""
-    square = float(arm_m @ arm_m)
-    inertia: Array = mass_kg * (square * np.eye(3) - np.outer(arm_m, arm_m))
-    return inertia
-
-
-def build_body(rig: Rig | None, payload: Payload, mass_kg: float | None = None,
-               rest_length_m: float | None = None) -> BodyModel:
+def build_body(rig: Rig | None, payload: Payload) -> BodyModel:
     """
-    Put the body together.
+    Put the constants together.
 
     Parameters
     ----------
     rig : Rig or None
         None is a body of unit mass and inertia that nothing is known to push.
     payload : Payload
-        A point mass.
-    mass_kg, rest_length_m : float, optional
-        Platform's mass and tether's rest length as found at start-up; the rig's if left out.
 
     Returns
     -------
@@ -72,28 +62,19 @@ def build_body(rig: Rig | None, payload: Payload, mass_kg: float | None = None,
         vector[0] = 1.0
         vector[1:10] = vector[10:19] = np.eye(3).ravel()
         return BodyModel(frozen(vector), zero, zero, zero, None, payload)
-    body, tether, sensors = rig.body, rig.tether, rig.sensors
-    platform = body.mass_kg if mass_kg is None else mass_kg
-    # A third of the tether's mass moves with the hook (Rayleigh).
-    parts = ((platform, body.centre_of_mass_m), (tether.mass_kg / 3.0, tether.hook_m),
-             (payload.mass_kg, payload.position_m))
-    mass = sum(part for part, _ in parts)
-    centre = frozen(np.array([part * place for part, place in parts]).sum(axis=0) / mass)
-    inertia = body.inertia_kg_m2.copy()
-    for part, place in parts:
-        inertia += point_inertia(place - centre, part)
-    vector[0] = mass
-    vector[1:10] = inertia.ravel()
-    vector[10:19] = np.linalg.inv(inertia).ravel()
+    body, tether, sensors = loaded_body(rig, payload), rig.tether, rig.sensors
+    centre = body.centre_m
+    vector[0] = body.mass_kg
+    vector[1:10] = body.inertia_kg_m2.ravel()
+    vector[10:19] = body.inertia_inverse.ravel()
     vector[19:22] = tether.hook_m - centre
-    vector[22] = tether.rest_length_m if rest_length_m is None else rest_length_m
+    vector[22] = tether.rest_length_m
     vector[23] = tether.stiffness_n_per_m
     vector[24] = tether.damping_n_s_per_m
     # Speeds and anchor are carried on along their rates for two periods, then held.
-    rotor_rate = sensors.rotor_states.rate_hz if sensors.rotor_states else np.inf
-    carrier_rate = sensors.carrier_states.rate_hz if sensors.carrier_states else np.inf
-    vector[26] = 2.0 / rotor_rate
-    vector[27] = 2.0 / carrier_rate
+    rotors, carrier = sensors.rotor_states, sensors.carrier_states
+    vector[26] = 2.0 / rotors.rate_hz if rotors else 0.0
+    vector[27] = 2.0 / carrier.rate_hz if carrier else 0.0
     imu = sensors.imu.position_m - centre if sensors.imu else zero
     return BodyModel(frozen(vector), centre, frozen(sensors.pose.position_m - centre), frozen(imu),
                      RotorModel(rig.rotors, centre), payload)

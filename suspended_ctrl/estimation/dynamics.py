@@ -89,15 +89,16 @@ def _add_skew(m: Array, row: int, column: int, scale: float, v: Array) -> None:
     m[row + 2, column + 1] += scale * v[0]
 
 
-@kernel(types.void(VECTOR, VECTOR, VECTOR, REAL, OUT_VECTOR, OUT_MATRIX, types.boolean))
-def _model(x: Array, u: Array, c: Array, t: float, s: Array, j: Array, want: bool) -> None:
+@kernel(types.void(VECTOR, VECTOR, VECTOR, REAL, OUT_VECTOR, OUT_MATRIX, OUT_MATRIX,
+                   types.boolean))
+def _model(x: Array, u: Array, c: Array, t: float, s: Array, j: Array, r: Array,
+           want: bool) -> None:
     """
     Specific force and angular acceleration, and their Jacobian if wanted.
 
     ``s`` (7): specific force of the centre of mass 0:3 (body), angular acceleration 3:6 (body),
-    tension 6. ``j`` (6, 24): derivative of s[0:6] by the errors.
+    tension 6. ``j`` (6, 24): derivative of s[0:6] by the errors. ``r`` (3, 3): body to map.
     """
-    r = np.empty((3, 3))
     attitude_matrix(x, r)
     mass = c[0]
     rate = x[10:13]
@@ -215,8 +216,8 @@ def _model(x: Array, u: Array, c: Array, t: float, s: Array, j: Array, want: boo
             j[i, k] /= mass
 
 
-@kernel(types.void(VECTOR, VECTOR, VECTOR, REAL, OUT_VECTOR, OUT_MATRIX))
-def linearise(x: Array, u: Array, c: Array, t: float, s: Array, j: Array) -> None:
+@kernel(types.void(VECTOR, VECTOR, VECTOR, REAL, OUT_VECTOR, OUT_MATRIX, OUT_MATRIX))
+def linearise(x: Array, u: Array, c: Array, t: float, s: Array, j: Array, r: Array) -> None:
     """
     Write what the model says of the accelerations now, and its derivative.
 
@@ -230,15 +231,17 @@ def linearise(x: Array, u: Array, c: Array, t: float, s: Array, j: Array) -> Non
         Out: specific force of the centre of mass, angular acceleration (body axes), tension.
     j : ndarray, shape (6, 24)
         Out: derivative of the first six by the errors.
+    r : ndarray, shape (3, 3)
+        Out: body to map.
 
     """
-    _model(x, u, c, t, s, j, True)
+    _model(x, u, c, t, s, j, r, True)
 
 
 @kernel(types.void(VECTOR, VECTOR, VECTOR, REAL, OUT_VECTOR))
 def evaluate(x: Array, u: Array, c: Array, t: float, s: Array) -> None:
     """Write ``s`` of ``linearise`` without the derivative."""
-    _model(x, u, c, t, s, np.empty((6, 24)), False)
+    _model(x, u, c, t, s, np.empty((6, 24)), np.empty((3, 3)), False)
 
 
 @kernel(types.void(OUT_VECTOR, VECTOR, VECTOR, REAL, REAL, OUT_VECTOR))
@@ -261,8 +264,7 @@ def move(x: Array, u: Array, c: Array, t: float, dt: float, felt: Array) -> None
     r = np.empty((3, 3))
     y = x.copy()
     half = 0.5 * dt
-    _model(x, u, c, t, s, unused, False)
-    attitude_matrix(x, r)
+    _model(x, u, c, t, s, unused, r, False)
     for i in range(3):
         a = r[i, 0] * s[0] + r[i, 1] * s[1] + r[i, 2] * s[2]
         if i == 2:
@@ -271,8 +273,7 @@ def move(x: Array, u: Array, c: Array, t: float, dt: float, felt: Array) -> None
         y[3 + i] += half * a
         y[10 + i] += half * s[3 + i]
     _turn(y, half * x[10], half * x[11], half * x[12])
-    _model(y, u, c, t + half, s, unused, False)
-    attitude_matrix(y, r)
+    _model(y, u, c, t + half, s, unused, r, False)
     _turn(x, dt * y[10], dt * y[11], dt * y[12])
     for i in range(3):
         a = r[i, 0] * s[0] + r[i, 1] * s[1] + r[i, 2] * s[2]

@@ -6,43 +6,31 @@ sample.
 """
 
 from dataclasses import dataclass, field
+import math
 
 import numpy as np
 
-from suspended_ctrl.estimation.alignment import align, Alignment
+from suspended_ctrl.estimation.alignment import Alignment
 from suspended_ctrl.estimation.body import BodyModel, build_body
-from suspended_ctrl.estimation.filter import ErrorStateFilter
 from suspended_ctrl.estimation.guard import Guard
 from suspended_ctrl.estimation.horizon import Horizon
-from suspended_ctrl.estimation.output import at_origin
+from suspended_ctrl.estimation.intake import SampleIntake
+from suspended_ctrl.estimation.output import estimate_of, no_estimate
 from suspended_ctrl.estimation.settings import EstimatorSettings, settings_for
-from suspended_ctrl.estimation.start import set_start
-from suspended_ctrl.estimation.timeline import (
-    CARRIER,
-    Entry,
-    IMU,
-    PAYLOAD,
-    POSE,
-    ROTORS,
-    TETHER,
-)
-from suspended_ctrl.physics.rotation import conjugate, matrix, multiply, normalised
-from suspended_ctrl.physics.values import (
-    CarrierSample,
-    Estimate,
-    ImuSample,
-    Payload,
-    PayloadEvent,
-    PoseSample,
-    RotorSample,
-    Sample,
-    TetherLoadSample,
-)
-from suspended_ctrl.rig.frozen import Array, ArrayLike
+from suspended_ctrl.estimation.start import try_start
+from suspended_ctrl.estimation.timeline import Entry, PAYLOAD, POSE
+from suspended_ctrl.physics.values import Estimate, Payload, Sample
 from suspended_ctrl.rig.rig import Rig
 
 # Poses count as stopped after so many periods without one.
 MISSING_PERIODS = 3.0
+# A pose waits so long for the other samples up to its stamp.
+WAIT_S = 0.05
+# Of the greatest lag of a pose behind the newest sample this share is left at the next pose.
+LAG_KEPT = 0.98
+# An offset of the stamps is reported from here on, if it is so many standard deviations.
+OFFSET_REPORTED_S = 0.004
+OFFSET_SIGMAS = 5.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -61,7 +49,7 @@ class EstimatorOutputs:
     message: str = ''
 
 
-class Estimator:
+class Estimator(SampleIntake):
     """
     State estimation for a rig, or for any body with an IMU and a motion-capture pose.
 
@@ -74,12 +62,12 @@ class Estimator:
 
     Attributes
     ----------
+    rig, settings :
+        As above.
     guard : Guard
         Counts of what was refused.
     alignment : Alignment or None
-        What start-up found.
-    message : str
-        What people should know, or nothing.
+        What start-up found; None before.
 
     Raises
     ------
@@ -93,125 +81,20 @@ class Estimator:
             if rig is None:
                 raise ValueError('without a rig the settings (noise) must be given')
             settings = settings_for(rig)
-        self.rig = rig
+        super().__init__(rig, Guard(settings))
         self.settings = settings
-        self.guard = Guard(settings)
         self.alignment: Alignment | None = None
-        self.message = ''
-        sensors = rig.sensors if rig else None
-        imu = sensors.imu if sensors else None
-        self._marker_back = _unless_identity(sensors.pose.quaternion_wxyz if sensors else None)
-        self._imu_rotation = _unless_identity(imu.quaternion_wxyz if imu else None)
-        if self._marker_back is not None:
-            self._marker_back = conjugate(self._marker_back)
-        if self._imu_rotation is not None:
-            self._imu_rotation = matrix(self._imu_rotation)
-        self._imu_usable = True
-        body = build_body(rig, Payload())
-        self._horizon = Horizon(settings, body, self._loaded, self.guard.verdict)
+        self._message = 'no pose yet'
+        self._horizon = Horizon(settings, self._loaded(Payload()), self._loaded,
+                                self.guard.verdict)
         if rig is not None:
             self._horizon.filter.u[:3] = rig.carrier.anchor_map(np.zeros(len(rig.carrier.axes)))
+        self._missing_s = MISSING_PERIODS * settings.pose_period_s
         self._pose_lag_s = 0.0
-        self._pose_newest_s = -np.inf
+        self._pose_newest_s = -math.inf
+        self._other_newest_s = -math.inf
+        self._judge_s = -math.inf
         self._given: Estimate | None = None
-
-    # ------------------------------------------------------------ samples
-
-    def imu(self, t: float, rate: ArrayLike, force: ArrayLike) -> bool:
-        """
-        Take a sample of the IMU.
-
-        Parameters
-        ----------
-        t : float
-            Stamp, s.
-        rate, force : array_like, shape (3,)
-            rad/s and m/s^2 (specific force), sensor axes.
-
-        Returns
-        -------
-        bool
-            Whether it was taken; ``guard.refused`` counts why not.
-
-        """
-        sample = self.guard.vectors(IMU, t, rate, 3, force, 3) if self._imu_usable else None
-        if sample is None:
-            return False
-        if self._imu_rotation is not None:
-            sample = self._imu_rotation @ sample[0], self._imu_rotation @ sample[1]
-        return self._push(t, IMU, sample)
-
-    def pose(self, t: float, position: ArrayLike, quaternion_wxyz: ArrayLike) -> bool:
-        """
-        Take a pose of the marker body in map.
-
-        Parameters
-        ----------
-        t : float
-            Stamp, s.
-        position : array_like, shape (3,)
-        quaternion_wxyz : array_like, shape (4,)
-
-        Returns
-        -------
-        bool
-            Whether it was taken; the gate may yet refuse it.
-
-        """
-        guard = self.guard
-        sample = guard.vectors(POSE, t, position, 3, quaternion_wxyz, 4)
-        if sample is None or not guard.unit(sample[1]) or guard.frozen_pose(*sample):
-            return False
-        place, attitude = sample[0], normalised(sample[1])
-        if self._marker_back is not None:
-            attitude = multiply(attitude, self._marker_back)
-        return self._push(t, POSE, (place, attitude))
-
-    def rotors(self, t: float, speed: ArrayLike) -> bool:
-        """Take measured rotor speeds, rad/s, in the rig's order; returns whether taken."""
-        if self.rig is None:
-            return False
-        sample = self.guard.vectors(ROTORS, t, speed, self.rig.rotors.count)
-        return sample is not None and self._push(t, ROTORS, sample[0])
-
-    def carrier(self, t: float, position: ArrayLike, velocity: ArrayLike = ()) -> bool:
-        """Take measured axis positions, m (their velocity is not used); returns whether taken."""
-        if self.rig is None:
-            return False
-        sample = self.guard.vectors(CARRIER, t, position, len(self.rig.carrier.axes))
-        return sample is not None and self._push(
-            t, CARRIER, self.rig.carrier.anchor_map(sample[0]))
-
-    def tether_load(self, t: float, tension: float) -> bool:
-        """Take a measured tension, N; returns whether taken."""
-        if self.rig is None:
-            return False
-        sample = self.guard.vectors(TETHER, t, (tension,), 1)
-        return sample is not None and self._push(t, TETHER, tension)
-
-    def payload(self, event: PayloadEvent) -> bool:
-        """Take what hangs on the platform from ``event.stamp_s`` on; returns whether taken."""
-        if self.rig is None:
-            return False
-        sample = self.guard.vectors(PAYLOAD, event.stamp_s, (event.mass_kg,), 1,
-                                    event.position_m, 3)
-        if sample is None or event.mass_kg < 0.0:
-            return False
-        return self._push(event.stamp_s, PAYLOAD, event)
-
-    def take(self, sample: Sample) -> bool:
-        """Hand a sample of any kind to the method for its kind."""
-        if isinstance(sample, ImuSample):
-            return self.imu(sample.stamp_s, sample.rate_rad_s, sample.force_m_s2)
-        if isinstance(sample, PoseSample):
-            return self.pose(sample.stamp_s, sample.position_map_m, sample.quaternion_wxyz)
-        if isinstance(sample, RotorSample):
-            return self.rotors(sample.stamp_s, sample.speed_rad_s)
-        if isinstance(sample, CarrierSample):
-            return self.carrier(sample.stamp_s, sample.position_m, sample.velocity_m_s)
-        if isinstance(sample, TetherLoadSample):
-            return self.tether_load(sample.stamp_s, sample.tension_n)
-        return self.payload(sample)
 
     # ------------------------------------------------------------ answers
 
@@ -233,7 +116,8 @@ class Estimator:
         """
         for sample in inputs.samples:
             self.take(sample)
-        return EstimatorOutputs(self._answer(), self._diagnostics(t), self.message)
+        estimate = self._answer()
+        return EstimatorOutputs(estimate, self._diagnostics(t), self.message)
 
     def state(self, t: float) -> Estimate:
         """
@@ -251,11 +135,26 @@ class Estimator:
 
         """
         known = self._horizon.at(t) if self.alignment else None
-        return _blank() if known is None else self._estimate(known)
+        return no_estimate() if known is None else estimate_of(known)
+
+    @property
+    def message(self) -> str:
+        """What people should know, or nothing."""
+        if self.offset_found:
+            return f'pose stamps off by {1e3 * self._horizon.filter.offset_s:.1f} ms'
+        return self._message
+
+    @property
+    def offset_found(self) -> bool:
+        """Whether the pose stamps are on another clock than the other samples'."""
+        state = self._horizon.filter
+        size = abs(state.offset_s)
+        return (size > OFFSET_REPORTED_S
+                and size > OFFSET_SIGMAS * math.sqrt(state.offset_variance_s2))
 
     def _answer(self) -> Estimate:
         if self.alignment is None:
-            return _blank()
+            return no_estimate()
         accepted = self._horizon.filter.accepted_s
         newest = self.guard.newest_s
         late = not newest - accepted <= self._pose_lag_s + self._missing_s
@@ -266,10 +165,6 @@ class Estimator:
 
     # ------------------------------------------------------------ inside
 
-    @property
-    def _missing_s(self) -> float:
-        return MISSING_PERIODS * self.settings.pose_period_s
-
     def _push(self, t: float, kind: int, entry: Entry) -> bool:
         guard, horizon = self.guard, self._horizon
         if not guard.stamp(kind, t, horizon.oldest_s):
@@ -279,89 +174,72 @@ class Estimator:
         if not horizon.note((t, kind), entry):
             return guard.count(kind, 'duplicate')
         if kind == POSE:
-            self._pose_lag_s = max(guard.newest_s - t, 0.98 * self._pose_lag_s)
+            self._pose_lag_s = max(guard.newest_s - t, LAG_KEPT * self._pose_lag_s)
             self._pose_newest_s = max(self._pose_newest_s, t)
             if self.alignment is None:
-                self._try_start()
+                self._try_start(t)
+        elif kind != PAYLOAD:
+            self._other_newest_s = max(self._other_newest_s, t)
         if self.alignment is not None:
-            limit = self._pose_newest_s
-            if guard.newest_s - limit > self._pose_lag_s + self._missing_s:
-                limit = guard.newest_s - self._pose_lag_s - self.settings.pose_period_s
-            horizon.absorb(limit)
+            horizon.absorb(self._limit_s())
         return True
 
-    def _loaded(self, event: PayloadEvent) -> BodyModel:
-        return build_body(self.rig, Payload(event.mass_kg, event.position_m))
+    def _limit_s(self) -> float:
+        """Stamp up to which samples may be absorbed now."""
+        limit, newest = self._pose_newest_s, self.guard.newest_s
+        if newest - limit > self._pose_lag_s + self._missing_s:
+            return newest - self._pose_lag_s - self.settings.pose_period_s
+        if limit - WAIT_S < self._other_newest_s < limit:
+            return self._other_newest_s
+        return limit
 
-    def _try_start(self) -> None:
-        line, settings = self._horizon.line, self.settings
-        start_s = self._pose_newest_s - settings.alignment_s
-        poses = [(key[0], *entry) for key, entry in zip(line.keys, line.entries, strict=True)
-                 if key[1] == POSE and key[0] >= start_s]
-        if len(poses) < 2 or line.keys[0][0] > start_s + 1.5 * settings.pose_period_s:
+    def _loaded(self, payload: Payload) -> BodyModel:
+        return build_body(self.rig, payload)
+
+    def _try_start(self, t: float) -> None:
+        if t < self._judge_s:
             return
-        samples = [entry for key, entry in zip(line.keys, line.entries, strict=True)
-                   if key[1] == IMU and key[0] >= start_s]
-        stamps, positions, attitudes = (np.array(column) for column in zip(*poses, strict=True))
-        rates, forces = (np.array([s[i] for s in samples]) for i in range(2))
-        found = align(settings, stamps, positions, attitudes, rates, forces)
-        self.message = found.message
-        line.rewind((start_s, -1))
-        line.forget(start_s)
+        found = try_start(self._horizon.line, self.settings, self._horizon.filter)
+        if found is None:
+            self._message = 'aligning: hold still'
+            return
+        self._message = found.message
         if not found.ok:
+            # Another look when a quarter of the window is new.
+            self._judge_s = t + 0.25 * self.settings.alignment_s
             return
         self._imu_usable = found.imu_usable
         self.alignment = found
-        set_start(self._horizon.filter, settings, found, float(stamps[0]))
-        self._horizon.begin()
+        self._horizon.begin(found.imu_usable)
 
     def _rebase(self) -> None:
         """Go on with the present state on the clock that the samples now have."""
         self.guard.restart()
-        self._pose_newest_s = self.guard.offered
+        t = self.guard.newest_s
+        self._pose_newest_s = self._other_newest_s = t
+        self._judge_s = -math.inf
         self._given = None
-        self._horizon.line.clear()
-        if self.alignment is not None:
-            state = self._horizon.filter
-            state.t = self.guard.offered
-            state.u[21:23] = -np.inf
-            state.accepted_s = state.refused_since_s = float('nan')
-            self._horizon.begin()
-
-    def _estimate(self, state: ErrorStateFilter) -> Estimate:
-        out, covariance, r = np.empty(9), np.empty((12, 12)), matrix(state.x[6:10])
-        at_origin(state.x, state.p, r, state.body.centre_m, out, covariance)
-        return Estimate(
-            stamp_s=state.t, position_map_m=out[:3], velocity_map_m_s=out[3:6],
-            quaternion_wxyz=normalised(state.x[6:10]), rate_body_rad_s=state.x[10:13].copy(),
-            covariance=covariance, disturbance_force_map_n=state.x[19:22].copy(),
-            disturbance_torque_map_nm=out[6:9], payload=state.body.payload,
-            pose_stamp_s=state.accepted_s, valid=True)
+        self._horizon.restart(t, self.alignment is not None)
 
     def _diagnostics(self, t: float) -> dict[str, float]:
         state, guard = self._horizon.filter, self.guard
-        return {
+        figures = {
             'started': float(self.alignment is not None),
             'pose_age_s': t - state.accepted_s,
+            'pose_lag_s': self._pose_lag_s,
             'nis': state.nis,
             'poses_accepted': float(guard.accepted),
             'poses_gated': float(guard.gated),
             'pose_repeats': float(guard.repeats),
-            'stamp_offset_s': state.offset[0],
-            'stamp_offset_sigma_s': state.offset[1] ** 0.5,
-            **{f'refused.{name}': float(count) for name, count in guard.refused.items()},
+            'recoveries': float(state.recoveries),
+            'imu_surprises': float(state.surprises),
+            'stamp_offset_s': state.offset_s,
+            'stamp_offset_sigma_s': math.sqrt(state.offset_variance_s2),
+            'stamp_offset_found': float(self.offset_found),
         }
-
-
-def _unless_identity(quaternion: Array | None) -> Array | None:
-    return None if quaternion is None or abs(quaternion[0]) == 1.0 else quaternion
-
-
-def _blank() -> Estimate:
-    nothing = np.full(3, np.nan)
-    return Estimate(
-        stamp_s=float('nan'), position_map_m=nothing, velocity_map_m_s=nothing,
-        quaternion_wxyz=np.full(4, np.nan), rate_body_rad_s=nothing,
-        covariance=np.full((12, 12), np.nan), disturbance_force_map_n=nothing,
-        disturbance_torque_map_nm=nothing, payload=Payload(), pose_stamp_s=float('nan'),
-        valid=False)
+        if self.alignment is not None:
+            figures['aligned_mass_kg'] = self.alignment.mass_kg
+            figures['aligned_rest_length_m'] = self.alignment.rest_length_m
+        for name, count in guard.refused.items():
+            figures[f'refused.{name}'] = float(count)
+        return figures

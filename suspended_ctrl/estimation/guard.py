@@ -6,7 +6,7 @@ import math
 import numpy as np
 
 from suspended_ctrl.estimation.settings import EstimatorSettings
-from suspended_ctrl.estimation.timeline import KIND_NAMES, POSE
+from suspended_ctrl.estimation.timeline import KIND_NAMES, PAYLOAD, POSE
 from suspended_ctrl.physics.kernel import kernel, REAL, TRUTH, VECTOR
 from suspended_ctrl.rig.frozen import Array, ArrayLike
 
@@ -117,13 +117,13 @@ class Guard:
         return True
 
     def stamp(self, kind: int, t: float, oldest_s: float) -> bool:
-        """Whether a stamp is on the clock of the others and not older than ``oldest_s``."""
-        if t <= oldest_s or t > self.newest_s + AHEAD_MAX_S > -math.inf:
+        """Whether a stamp is on the clock of the others and not before ``oldest_s``."""
+        if t < oldest_s or t > self.newest_s + AHEAD_MAX_S > -math.inf:
             self._wrong_time += 1
             self.offered = t
-            return self.count(kind, 'too_late' if t <= oldest_s else 'too_early')
+            return self.count(kind, 'too_late' if t < oldest_s else 'too_early')
         self._wrong_time = 0
-        if t > self.newest_s:
+        if t > self.newest_s and kind != PAYLOAD:
             self.newest_s = t
         return True
 

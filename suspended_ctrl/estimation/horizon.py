@@ -10,7 +10,9 @@ from collections.abc import Callable
 import numpy as np
 
 from suspended_ctrl.estimation.body import BodyModel
-from suspended_ctrl.estimation.filter import ErrorStateFilter, Snapshot
+from suspended_ctrl.estimation.filter import ErrorStateFilter
+from suspended_ctrl.estimation.load import settle_load, SETTLE_S, take_load
+from suspended_ctrl.estimation.motion import Snapshot
 from suspended_ctrl.estimation.settings import EstimatorSettings
 from suspended_ctrl.estimation.timeline import (
     CARRIER,
@@ -20,10 +22,11 @@ from suspended_ctrl.estimation.timeline import (
     PAYLOAD,
     POSE,
     ROTORS,
+    SETTLED,
     TETHER,
     Timeline,
 )
-from suspended_ctrl.physics.values import PayloadEvent
+from suspended_ctrl.physics.values import Payload
 
 SNAPSHOT_EVERY_S = 0.02
 
@@ -37,14 +40,14 @@ class Horizon:
     settings : EstimatorSettings
     body : BodyModel
     loaded : callable
-        Body that carries a payload event's load.
+        Body that carries a payload.
     verdict : callable
         Told stamp and fate of every pose.
 
     """
 
     def __init__(self, settings: EstimatorSettings, body: BodyModel,
-                 loaded: Callable[[PayloadEvent], BodyModel],
+                 loaded: Callable[[Payload], BodyModel],
                  verdict: Callable[[float, bool], None]) -> None:
         self._settings = settings
         self._loaded = loaded
@@ -57,20 +60,38 @@ class Horizon:
 
     @property
     def oldest_s(self) -> float:
-        """Samples with stamps up to here come too late."""
+        """Samples with stamps before this come too late."""
         return self._snapshots[0].t if self._snapshots else -np.inf
 
-    def begin(self) -> None:
-        """Start from the filter as it stands; samples at and before its stamp are gone."""
-        self._last = (self.filter.t, POSE)
-        self.line.rewind(self._last)
-        self.line.forget(np.inf)
+    def begin(self, imu: bool) -> None:
+        """Start from the filter as it stands, over the samples after its stamp, the IMU's or not."""
+        line = self.line
+        line.drop(self.filter.t)
+        if not imu:
+            kept = [(k, e) for k, e in zip(line.keys, line.entries, strict=True) if k[1] != IMU]
+            line.keys, line.entries = [k for k, _ in kept], [e for _, e in kept]
+        self._mark()
+
+    def restart(self, t: float, running: bool) -> None:
+        """Go on from the present state on a clock that now shows ``t``."""
+        self.line.clear()
+        if running:
+            state = self.filter
+            state.t = t
+            state.u[21:23] = -np.inf
+            state.accepted_s = state.refused_since_s = float('nan')
+            self._mark()
+
+    def _mark(self) -> None:
+        self._last = (self.filter.t, -1)
         self._snapshots = [self.filter.snapshot(self._last)]
 
     def note(self, key: Key, entry: Entry) -> bool:
         """Take a sample, going back if it belongs before the horizon; false for a duplicate."""
         if not self.line.add(key, entry):
             return False
+        if key[1] == PAYLOAD:
+            self.line.add((key[0] + SETTLE_S, SETTLED), entry)
         if self._snapshots and key <= self._last:
             while len(self._snapshots) > 1 and self._snapshots[-1].key >= key:
                 self._snapshots.pop()
@@ -145,13 +166,15 @@ class Horizon:
     def _drive(self, state: ErrorStateFilter, key: Key, entry: Entry) -> None:
         t, kind = key
         if kind == ROTORS:
-            state.rotors(t, entry)
+            state.rotors(t, entry[0])
         elif kind == CARRIER:
-            state.anchor(t, entry)
+            state.anchor(t, entry[0])
         elif kind == TETHER:
-            state.tension(entry)
+            state.tension(float(entry[0][0]))
         elif kind == PAYLOAD:
-            state.set_body(self._loaded(entry))
+            take_load(state, self._loaded, Payload(float(entry[0][0]), entry[1]))
+        elif kind == SETTLED:
+            settle_load(state, self._loaded)
 
     def _keep(self) -> None:
         snapshots = self._snapshots

@@ -1,9 +1,13 @@
-"""From the filter's errors at the centre of mass to the estimate at the ``base_link`` origin."""
+"""From the filter's state at the centre of mass to the estimate at the ``base_link`` origin."""
 
 from numba import types
 import numpy as np
 
+from suspended_ctrl.estimation.dynamics import attitude_matrix
+from suspended_ctrl.estimation.filter import ErrorStateFilter
 from suspended_ctrl.physics.kernel import kernel, MATRIX, OUT_MATRIX, OUT_VECTOR, VECTOR
+from suspended_ctrl.physics.rotation import normalised
+from suspended_ctrl.physics.values import Estimate, Payload
 from suspended_ctrl.rig.frozen import Array
 
 
@@ -70,3 +74,47 @@ def at_origin(x: Array, p: Array, r: Array, centre: Array, out: Array, covarianc
     for i in range(12):
         for k in range(i):
             covariance[i, k] = covariance[k, i]
+
+
+def estimate_of(state: ErrorStateFilter) -> Estimate:
+    """
+    Estimate at the stamp of a filter.
+
+    Parameters
+    ----------
+    state : ErrorStateFilter
+
+    Returns
+    -------
+    Estimate
+        Its disturbance is what the nominal model does not explain, tether included: what a load
+        cell added to the tension is part of it.
+
+    """
+    out, covariance = np.empty(9), np.empty((12, 12))
+    x, u, r = state.x, state.u, np.empty((3, 3))
+    attitude_matrix(x, r)
+    at_origin(x, state.p, r, state.body.centre_m, out, covariance)
+    force, torque = x[19:22].copy(), out[6:9]
+    if u[23] != 0.0:
+        hook = r @ state.body.vector[19:22]
+        span = u[:3] - x[:3] - hook
+        pull = u[23] / np.linalg.norm(span) * span
+        force += pull
+        torque = torque + np.cross(hook, pull)
+    return Estimate(
+        stamp_s=state.t, position_map_m=out[0:3], velocity_map_m_s=out[3:6],
+        quaternion_wxyz=normalised(x[6:10]), rate_body_rad_s=x[10:13].copy(),
+        covariance=covariance, disturbance_force_map_n=force, disturbance_torque_map_nm=torque,
+        payload=state.body.payload, pose_stamp_s=state.accepted_s, valid=True)
+
+
+def no_estimate() -> Estimate:
+    """Make the estimate of one who knows nothing."""
+    nothing = np.full(3, np.nan)
+    return Estimate(
+        stamp_s=float('nan'), position_map_m=nothing, velocity_map_m_s=nothing,
+        quaternion_wxyz=np.full(4, np.nan), rate_body_rad_s=nothing,
+        covariance=np.full((12, 12), np.nan), disturbance_force_map_n=nothing,
+        disturbance_torque_map_nm=nothing, payload=Payload(), pose_stamp_s=float('nan'),
+        valid=False)

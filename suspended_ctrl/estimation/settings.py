@@ -40,6 +40,8 @@ class EstimatorSettings:
         Length of the window at start in which the rig must be still; 0 starts from the first pose.
     still_m_s, still_rad_s : float
         Rates above which it is not still.
+    moving_m_s, moving_rad_s : float
+        Spread of the rates of a platform that starts without that window.
 
     """
 
@@ -65,6 +67,8 @@ class EstimatorSettings:
     alignment_s: float = 0.4
     still_m_s: float = 0.05
     still_rad_s: float = 0.05
+    moving_m_s: float = 2.0
+    moving_rad_s: float = 1.0
 
 
 def settings_for(rig: Rig) -> EstimatorSettings:

@@ -3,15 +3,16 @@
 from bisect import bisect_left, bisect_right
 from dataclasses import dataclass, field
 
-from suspended_ctrl.physics.values import PayloadEvent
 from suspended_ctrl.rig.frozen import Array
 
 # Kinds, in the order in which samples of one stamp are absorbed.
-PAYLOAD, CARRIER, ROTORS, TETHER, IMU, POSE = range(6)
-KIND_NAMES = ('payload', 'carrier', 'rotors', 'tether', 'imu', 'pose')
+PAYLOAD, CARRIER, ROTORS, TETHER, IMU, POSE, SETTLED = range(7)
+KIND_NAMES = ('payload', 'carrier', 'rotors', 'tether', 'imu', 'pose', 'settled')
 
 Key = tuple[float, int]
-Entry = tuple[Array, Array] | Array | float | PayloadEvent
+# Rate and force; position and attitude; or one vector and another of no components: rotor speeds,
+# anchor, tension. Mass (1) and place of a payload.
+Entry = tuple[Array, Array]
 
 
 @dataclass(eq=False, slots=True)
@@ -46,6 +47,13 @@ class Timeline:
         del self.keys[:count]
         del self.entries[:count]
         self.taken -= count
+
+    def drop(self, before_s: float) -> None:
+        """Drop every sample with a stamp under ``before_s``."""
+        count = bisect_left(self.keys, (before_s, -1))
+        del self.keys[:count]
+        del self.entries[:count]
+        self.taken = max(self.taken - count, 0)
 
     def after(self, key: Key) -> int:
         """Index of the first sample after ``key``."""
