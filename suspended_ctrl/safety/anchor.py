@@ -33,7 +33,9 @@ def ramp_to_rest(position: Array, velocity: Array, deceleration: Array, lower: A
     position, velocity : ndarray, shape (k,)
         Setpoint in force and its rate.
     deceleration, lower, upper : ndarray, shape (k,)
+        m/s^2, and the ends of travel, m.
     dt : float
+        Step, s.
 
     Returns
     -------
@@ -138,6 +140,7 @@ class AnchorWatch:
         Parameters
         ----------
         position_m, velocity_m_s : ndarray, shape (k,)
+            Of each axis.
 
         Returns
         -------
@@ -182,6 +185,7 @@ class AnchorWatch:
         Parameters
         ----------
         dt_s : float
+            Step.
         resting : bool
             Whether, once stopped, the command goes with the measured position (no rotor power)
             or stays (power on).

@@ -126,6 +126,7 @@ class Arrivals:
         t : float
             Monotonic time of this step; arrivals later than that count as now.
         inputs : SafetyInputs
+            What is new since the last step.
         jump_s : float
             Step of the ROS clock against the monotonic clock since the last step.
 

@@ -49,6 +49,7 @@ def tolerates_rotor_loss(rig: Rig) -> bool:
     Parameters
     ----------
     rig : Rig
+        The hardware.
 
     Returns
     -------

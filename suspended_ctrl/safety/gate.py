@@ -18,6 +18,7 @@ def bounded(demand: Array, lower: Array, upper: Array, spare: float, out: Array)
     Parameters
     ----------
     demand, lower, upper : ndarray, shape (n,)
+        One number a rotor or axis, and what it may be.
     spare : float
         Overshoot that is clipped, as a share of the range.
     out : ndarray, shape (n,)

@@ -113,4 +113,3 @@ def limit_table(rig: Rig, settings: SafetySettings) -> tuple[Limit, ...]:
     )
     assert tuple(row.name for row in rows[:len(JUDGED)]) == JUDGED
     return rows
-

@@ -67,6 +67,7 @@ def take_motion(position: Array, velocity: Array, quaternion: Array, rate: Array
     Parameters
     ----------
     position, velocity, quaternion, rate : ndarray, shapes (3,), (3,), (4,), (3,)
+        Of the ``base_link`` origin.
     out : ndarray, shape (13,)
         Out: the four in this order, the quaternion of unit length.
 
@@ -102,10 +103,12 @@ def disagreement(pose: Array, motion: Array, lead: float, limit_m: float,
     Parameters
     ----------
     pose, motion : ndarray, shape (7,), (13,)
+        Position and quaternion; what ``take_motion`` wrote.
     lead : float
         Stamp of the pose less that of the odometry, s; the odometry is moved on by it, up to
         0.1 s.
     limit_m, limit_rad : float
+        Of distance and angle.
 
     Returns
     -------

@@ -120,6 +120,7 @@ class RotorWatch:
         Parameters
         ----------
         speed_rad_s : ndarray, shape (n,)
+            Of each rotor.
 
         Returns
         -------

@@ -39,6 +39,7 @@ def fill_timed(t: float, at: Array, silence: Array, rotors: Array, anchor: Array
     Parameters
     ----------
     t : float
+        Now, s.
     at, silence : ndarray, shape (SENDERS,)
         Newest arrivals, and how long each sender may be silent; nan where it is not required.
         For ``IMU`` and ``LOAD`` the time for which a sample is used.
@@ -97,10 +98,13 @@ def hold_off(t: float, used: Array, since: Array, hold_off_s: Array, powered_onl
     Parameters
     ----------
     t : float
+        Now, s.
     used : ndarray, shape (n,)
+        Share of its limit that each row uses.
     since : ndarray, shape (n,)
         Kept between calls: when each row broke, infinity where it is not broken.
     hold_off_s, powered_only : ndarray, shape (n,)
+        Of each row; whether it applies only under rotor power.
     powered : bool
         Whether rotor power is on.
     broken : ndarray, shape (n,)

@@ -160,6 +160,7 @@ class SafetySettings:
         Parameters
         ----------
         rig : Rig
+            The hardware.
         **changes : object
             Any attribute, instead of its default.
 

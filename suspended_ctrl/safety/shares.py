@@ -63,7 +63,9 @@ class Shares:
         gap_s, jump_s : float
             Time since the last step; step of the ROS clock against it.
         seen : Arrivals
+            The newest of everything.
         state : str
+            One of ``SAFETY_STATES``.
         in_state_s : float
             Time since the state was entered.
         settled : bool

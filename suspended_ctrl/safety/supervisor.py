@@ -98,6 +98,7 @@ class SafetySupervisor:
         t : float
             Monotonic time, s; a value before the last step's counts as no time passed.
         inputs : SafetyInputs
+            What came since the last step.
 
         Returns
         -------

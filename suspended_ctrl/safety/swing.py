@@ -118,6 +118,7 @@ def predict_cut(rig: Rig, position_map_m: Array, velocity_map_m_s: Array, anchor
     Parameters
     ----------
     rig : Rig
+        The hardware.
     position_map_m, velocity_map_m_s : ndarray, shape (3,)
         Of the ``base_link`` origin at the cut.
     anchor_map_m : ndarray, shape (3,)

@@ -157,5 +157,5 @@ class Cell:
 
 
 def without(rig: Rig, **sensors: None) -> Rig:
-    """The rig without some of its sensors."""
+    """Rig without some of its sensors."""
     return replace(rig, sensors=replace(rig.sensors, **sensors))

@@ -98,7 +98,7 @@ def at_end_of_travel(cell: Cell) -> None:
 
 
 def tether_lost(cell: Cell, share: float) -> None:
-    """The accelerometer feels this much less than the stretch gives."""
+    """Accelerometer that feels this much less than the stretch gives."""
     cell.force = cell.force * (1.0 - 0.75 * share)
 
 

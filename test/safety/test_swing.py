@@ -21,7 +21,7 @@ STIFF_N_PER_M = 2e4
 
 
 def stiff_pendulum(rig: Rig, mass_kg: float, length_m: float) -> Rig:
-    """The rig as a point mass on a tether that hardly gives, without losses."""
+    """Rig as a point mass on a tether that hardly gives, without losses."""
     tether = replace(rig.tether, hook_m=frozen([0.0, 0.0, 0.0]), damping_n_s_per_m=0.0,
                      stiffness_n_per_m=STIFF_N_PER_M, mass_kg=0.0,
                      rest_length_m=length_m - mass_kg * G / STIFF_N_PER_M)
