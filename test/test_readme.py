@@ -1,5 +1,6 @@
 """README.md says what the code takes and gives, table by table."""
 
+import importlib
 from pathlib import Path
 import re
 from types import UnionType
@@ -106,6 +107,40 @@ def test_topic_table():
         assert (row[3] == 'sensor data' or row[3].startswith('best effort')) == best_effort
         depth = re.search(r'depth (\d+)', row[3])
         assert depth is None or int(depth.group(1)) == quality.depth
+
+
+def test_parameter_table():
+    parameters = pytest.importorskip('suspended_ctrl.nodes.parameters',
+                                     reason='rclpy is not installed')
+    common = set(parameters.NodeParameters.model_fields)
+    listed: dict[str, list[list[str]]] = {}
+    for row in tables('### Nodes and parameters')[0]:
+        if row[0].startswith('**'):
+            rows = listed.setdefault(row[0].strip('*`'), [])
+        else:
+            rows.append(row)
+    assert {names(row[0])[0] for row in listed.pop('every node')} == common
+    assert len(listed) == 6
+    for node, rows in listed.items():
+        fields = parameter_model(node, parameters.NodeParameters).model_fields
+        assert {names(row[0])[0] for row in rows} == set(fields) - common
+        for row in rows:
+            field = fields[names(row[0])[0]]
+            assert row[2] == (f'{field.default:g}' if isinstance(field.default, int | float)
+                              else field.default)
+            limits = re.fullmatch(r'([\d.]+) to ([\d.]+)', row[1])
+            if limits:
+                assert parameters.allowed(field).endswith(
+                    f'from {limits.group(1)} to {limits.group(2)}'), row
+
+
+def parameter_model(node: str, base: type[BaseModel]) -> type[BaseModel]:
+    """Model of a node's parameters."""
+    module = importlib.import_module(f'suspended_ctrl.nodes.{node}')
+    models = [value for value in vars(module).values() if isinstance(value, type)
+              and issubclass(value, base) and value is not base]
+    assert len(models) == 1
+    return models[0]
 
 
 def test_state_table():
