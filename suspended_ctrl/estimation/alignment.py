@@ -103,7 +103,7 @@ def align(settings: EstimatorSettings, stamps_s: Array, positions: Array, quater
 
 
 def check_imu(settings: EstimatorSettings, rate: Array, rates: Array, forces: Array) -> str:
-    """Say what is wrong with the units of a resting IMU, the rig turning at ``rate``; or nothing."""
+    """Say what is wrong with the units of a resting IMU while the rig turns at ``rate``."""
     if not rates.size:
         return ''
     force = float(np.linalg.norm(forces.mean(axis=0)))

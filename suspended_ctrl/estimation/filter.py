@@ -18,8 +18,8 @@ from suspended_ctrl.rig.frozen import Array
 IMU_GAP_S = 0.012
 # A sample of the IMU less probable than this is not the noise that the filter knows of.
 SURPRISE_PROBABILITY = 1e-9
-# Where no IMU tells, each pose after the first that is refused in a row lets the disturbance be off
-# by so much more: a push is followed, a single outlier changes nothing.
+# Where no IMU tells, each pose after the first that is refused in a row lets the disturbance be
+# off by so much more: a push is followed, a single outlier changes nothing.
 PUSH_SHARE_OF_WEIGHT = 0.1
 PUSH_ARM_M = 0.05
 # Monitor of the stamps: what it starts from, how fast an offset may drift, and the motion, in

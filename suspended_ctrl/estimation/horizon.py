@@ -64,7 +64,7 @@ class Horizon:
         return self._snapshots[0].t if self._snapshots else -np.inf
 
     def begin(self, imu: bool) -> None:
-        """Start from the filter as it stands, over the samples after its stamp, the IMU's or not."""
+        """Start from the filter as it stands; of the samples before its stamp none is kept."""
         line = self.line
         line.drop(self.filter.t)
         if not imu:
