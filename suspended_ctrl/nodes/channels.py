@@ -1,6 +1,5 @@
 """Ends of topics: an inbox that is emptied when the node wants to, an outbox for values."""
 
-from collections.abc import Callable
 import time
 from typing import Any
 
@@ -8,20 +7,13 @@ from rclpy.callback_groups import CallbackGroup
 from rclpy.lifecycle import LifecycleNode
 
 from suspended_ctrl.nodes.topics import GRAPH, message_class, QOS
-from suspended_ctrl.nodes.wire import (
-    decode,
-    decode_reference,
-    encode,
-    encode_reference,
-    WireTypes,
-)
+from suspended_ctrl.nodes.wire import ReadValue, value_reader, value_writer
 from suspended_ctrl.review.messages import MessageError
 from suspended_ctrl.review.topics import JointNames
 
 # More than any topic brings in a tick; what is left then waits for the next turn.
 _EMPTY_MAX = 64
 _COMPLAIN_EVERY_S = 1.0
-_TYPES = WireTypes()
 
 
 class Emptied(CallbackGroup):
@@ -52,7 +44,7 @@ class Inbox:
         As in ``topics.GRAPH``.
     names : JointNames
     read : callable, optional
-        Message to value, in place of the topic's own; raises ``MessageError``.
+        Bytes to value, in place of the topic's own; raises ``MessageError``.
 
     Attributes
     ----------
@@ -64,16 +56,13 @@ class Inbox:
     """
 
     def __init__(self, node: LifecycleNode, topic: str, names: JointNames,
-                 read: Callable[[Any], Any] | None = None) -> None:
+                 read: ReadValue | None = None) -> None:
         definition = GRAPH[topic]
         self.topic = topic
         self.received = 0
         self.refused = 0
         self.refusals: list[str] = []
-        read = read or (lambda message: definition.read(message, names))
-        self._value: Callable[[bytes], Any] = (
-            decode_reference if topic == 'reference'
-            else lambda data: read(decode(data, definition.message_type)))
+        self._value = read or value_reader(definition, names)
         self._node = node
         self._complained_s = float('-inf')
         self.subscription = node.create_subscription(
@@ -142,18 +131,11 @@ class Outbox:
                  always: bool = False) -> None:
         self.topic = topic
         self.always = always
-        self._definition = GRAPH[topic]
-        self._names = names
+        definition = GRAPH[topic]
+        self._data = value_writer(definition, names)
         create = node.create_publisher if always else node.create_lifecycle_publisher
-        self.publisher = create(
-            message_class(self._definition.message_type), topic, QOS[topic])
+        self.publisher = create(message_class(definition.message_type), topic, QOS[topic])
 
     def send(self, value: Any) -> None:
         """Publish a value of the topic's type."""
         self.publisher.publish(self._data(value))
-
-    def _data(self, value: Any) -> bytes:
-        if self.topic == 'reference':
-            return encode_reference(value)
-        definition = self._definition
-        return encode(definition.build(_TYPES, value, self._names), definition.message_type)

@@ -150,7 +150,8 @@ class EffortAllocatorNode(ManagedNode):
 def _nothing_to_plan(axes: int) -> PlanRequest:
     """Make a request for a carrier that is where it should be."""
     still = np.zeros(axes)
-    return PlanRequest(0.0, still, still, still, np.zeros((len(HORIZON_S), axes)))
+    return PlanRequest(effect_s=0.0, axis_m=still, axis_speed_m_s=still, setpoint_m=still,
+                       setpoint_speed_m_s=still, wanted_m=np.zeros((len(HORIZON_S), axes)))
 
 
 def main() -> int:

@@ -1,40 +1,18 @@
 """The estimate as it travels: odometry, and the disturbance and payload that belong to it."""
 
-from typing import Any
-
 import numpy as np
 
 from suspended_ctrl.nodes.managed import ManagedNode
+from suspended_ctrl.nodes.wire import motion_reader
 from suspended_ctrl.physics.lead import PlatformState
 from suspended_ctrl.physics.values import Estimate, Payload
-from suspended_ctrl.review.messages import Disturbance, MessageError, read_motion
+from suspended_ctrl.review.messages import Disturbance
+from suspended_ctrl.review.topics import TOPICS
 from suspended_ctrl.rig.frozen import frozen
 
 # Neither controller nor allocator looks at it.
 _NO_COVARIANCE = frozen(np.zeros((12, 12)))
 _ZERO = frozen(np.zeros(3))
-
-
-def read_placed_estimate(message: Any) -> Estimate:
-    """
-    Odometry as an estimate whose covariance is that of position alone.
-
-    That is all the supervisor judges; turning the other blocks into their axes costs more than
-    the rest of the message.
-
-    Raises
-    ------
-    MessageError
-
-    """
-    motion = read_motion(message)
-    covariance = np.zeros((12, 12))
-    covariance[:3, :3] = np.reshape(message.pose.covariance, (6, 6))[:3, :3]
-    if not np.isfinite(covariance[:3, :3]).all():
-        raise MessageError('covariance of position is not finite')
-    return Estimate(
-        motion.stamp_s, motion.position_map_m, motion.velocity_map_m_s, motion.quaternion_wxyz,
-        motion.rate_body_rad_s, covariance, _ZERO, _ZERO, Payload(), motion.stamp_s, True)
 
 
 class EstimateInbox:
@@ -55,7 +33,7 @@ class EstimateInbox:
     """
 
     def __init__(self, node: ManagedNode) -> None:
-        self.odometry = node.inbox('odometry', read_motion)
+        self.odometry = node.inbox('odometry', motion_reader(TOPICS['odometry']))
         self._disturbance_in = node.inbox('disturbance')
         self._payload_in = node.inbox('payload')
         self.forget()

@@ -4,7 +4,6 @@ from collections.abc import Callable
 import gc
 import time
 import traceback
-from typing import Any
 
 from rclpy.lifecycle import LifecycleNode, LifecycleState, TransitionCallbackReturn
 
@@ -13,6 +12,7 @@ from suspended_ctrl.nodes.health import Health
 from suspended_ctrl.nodes.parameters import declare, NodeParameters
 from suspended_ctrl.nodes.spin import Loop
 from suspended_ctrl.nodes.topics import latched
+from suspended_ctrl.nodes.wire import ReadValue
 from suspended_ctrl.review.topics import JointNames
 from suspended_ctrl.rig.errors import InputError
 from suspended_ctrl.rig.file import load_rig
@@ -93,7 +93,7 @@ class ManagedNode(LifecycleNode):
 
     # ------------------------------------------------------------ tools for them
 
-    def inbox(self, topic: str, read: Callable[[Any], Any] | None = None) -> Inbox:
+    def inbox(self, topic: str, read: ReadValue | None = None) -> Inbox:
         """Listen to a topic, see ``Inbox``."""
         made = Inbox(self, topic, self._names, read)
         self._inboxes.append(made)

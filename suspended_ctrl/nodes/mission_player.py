@@ -12,8 +12,9 @@ from suspended_ctrl.mission.timing import timed
 from suspended_ctrl.nodes.managed import ManagedNode
 from suspended_ctrl.nodes.parameters import NodeParameters
 from suspended_ctrl.nodes.run import run_node
+from suspended_ctrl.nodes.wire import motion_reader
 from suspended_ctrl.physics.lead import PlatformState
-from suspended_ctrl.review.messages import read_motion
+from suspended_ctrl.review.topics import TOPICS
 
 NAME = 'mission_player'
 _RATE_HZ = 100.0
@@ -40,7 +41,7 @@ class MissionPlayerNode(ManagedNode):
         """Read and time the mission; make the channels and services."""
         p = self.parameters
         self.part = MissionPlayer(timed(load_mission(p.mission, p.rig)))
-        self._odometry = self.inbox('odometry', read_motion)
+        self._odometry = self.inbox('odometry', motion_reader(TOPICS['odometry']))
         self._state_in = self.inbox('safety/state')
         self._reference = self.outbox('reference')
         self._payload = self.outbox('payload_event')

@@ -8,8 +8,7 @@ import numpy as np
 from suspended_ctrl.bench.fault_kinds import Fault, Place, ProcessKilled, ProcessStopped
 from suspended_ctrl.nodes.processes import Processes
 from suspended_ctrl.nodes.session_node import SessionNode
-from suspended_ctrl.nodes.wire import decode
-from suspended_ctrl.review.messages import MessageError, read_motion
+from suspended_ctrl.nodes.wire import motion_reader
 from suspended_ctrl.review.topics import TOPICS
 from suspended_ctrl.rig.frozen import Array
 
@@ -35,6 +34,7 @@ class ProcessFaults:
         self._path_start_s: float | None = None
         self._wakes: list[tuple[float, str]] = []
         self._place: Array | None = None
+        self._read = motion_reader(TOPICS['ground_truth'])
         if any(fault.at_place is not None for fault in self._waiting):
             node.watch('ground_truth', self._hear)
 
@@ -68,8 +68,4 @@ class ProcessFaults:
             np.linalg.norm(self._place - np.array(place.position_m)) <= place.within_m)
 
     def _hear(self, data: bytes) -> None:
-        try:
-            motion = read_motion(decode(data, TOPICS['ground_truth'].message_type))
-        except MessageError:
-            return
-        self._place = motion.position_map_m
+        self._place = self._read(data).position_map_m

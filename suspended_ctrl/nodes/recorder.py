@@ -1,6 +1,7 @@
 """Records a graph's topics as they are on the wire."""
 
 from collections.abc import Callable
+from contextlib import suppress
 from pathlib import Path
 import time
 from typing import Any
@@ -13,6 +14,7 @@ from suspended_ctrl.nodes.topics import message_class, QOS
 from suspended_ctrl.review.bag import BagWriter
 from suspended_ctrl.review.log import RunFacts
 from suspended_ctrl.review.mcap_file import Channel
+from suspended_ctrl.review.messages import MessageError
 from suspended_ctrl.review.qos import offered_qos
 from suspended_ctrl.review.topics import JointNames, Topic, TOPICS
 
@@ -64,7 +66,7 @@ class Recorder:
         self._flush_s = time.monotonic()
 
     def watch(self, topic: str, watcher: Callable[[bytes], None]) -> None:
-        """Hand every message of a topic to ``watcher`` as well, serialized."""
+        """Hand every message of a topic to ``watcher``, too; it may raise ``MessageError``."""
         self._lines[topic].watchers.append(watcher)
 
     def counts(self) -> dict[str, int]:
@@ -85,7 +87,9 @@ class Recorder:
                     write(channel, info['source_timestamp'], data)
                     line.count += 1
                     for watcher in line.watchers:
-                        watcher(data)
+                        # Recorded all the same; what is wrong with it, its receivers say.
+                        with suppress(MessageError):
+                            watcher(data)
         now = time.monotonic()
         if now >= self._flush_s:
             self._flush_s = now + _FLUSH_EVERY_S

@@ -10,14 +10,14 @@ from std_srvs.srv import SetBool, Trigger
 
 from suspended_ctrl.nodes.cautions import CAUTIONS
 from suspended_ctrl.nodes.channels import Inbox
-from suspended_ctrl.nodes.estimate_inbox import read_placed_estimate
 from suspended_ctrl.nodes.managed import ManagedNode
 from suspended_ctrl.nodes.peers import Peers
 from suspended_ctrl.nodes.run import run_node
 from suspended_ctrl.nodes.safety_parameters import SafetySupervisorParameters, settings_of
+from suspended_ctrl.nodes.wire import placed_estimate_reader, value_reader
 from suspended_ctrl.physics.values import CarrierCommand, RotorCommand
 from suspended_ctrl.review.log import event_diagnostics, SafetyEvent
-from suspended_ctrl.review.messages import read_flag
+from suspended_ctrl.review.topics import JointNames, TOPICS
 from suspended_ctrl.safety.supervisor import SafetySupervisor
 from suspended_ctrl.safety.values import (
     EmergencyStop,
@@ -58,9 +58,11 @@ class SafetySupervisorNode(ManagedNode):
                  'carrier_demand': axes}
         self._boxes: list[Inbox] = [self.inbox(topic) for topic, is_there in there.items()
                                     if is_there]
-        self._boxes.append(self.inbox('odometry', read_placed_estimate))
         self._boxes.append(self.inbox(
-            'emergency_stop', lambda message: EmergencyStop(read_flag(message))))
+            'odometry', placed_estimate_reader(TOPICS['odometry'])))
+        pressed = value_reader(TOPICS['emergency_stop'], JointNames((), ()))
+        self._boxes.append(self.inbox(
+            'emergency_stop', lambda data: EmergencyStop(pressed(data))))
         if self.parameters.heartbeat_silence_s > 0.0:
             self._boxes.append(self.inbox('operator_heartbeat', lambda _: Heartbeat()))
         self._reports = self.inbox('/diagnostics')

@@ -14,10 +14,9 @@ from rclpy.task import Future
 from std_srvs.srv import SetBool, Trigger
 
 from suspended_ctrl.nodes.recorder import Recorder
-from suspended_ctrl.nodes.wire import decode, decode_reference
+from suspended_ctrl.nodes.wire import value_reader
 from suspended_ctrl.physics.reference import Reference
 from suspended_ctrl.review.log import events_of, RunFacts
-from suspended_ctrl.review.messages import MessageError, read_safety_state
 from suspended_ctrl.review.topics import JointNames, TOPICS
 from suspended_ctrl.rig.rig import Rig
 
@@ -68,6 +67,8 @@ class SessionNode:
         self._asked: list[Future] = []
         names = JointNames(rig.rotors.names, rig.carrier.axes)
         self._recorder = Recorder(self._node, names, recording)
+        self._read = {name: value_reader(TOPICS[name], names)
+                      for name in ('safety/state', '/diagnostics', 'reference')}
         self._recorder.watch('safety/state', self._hear_state)
         self._recorder.watch('/diagnostics', self._hear_diagnostics)
         self._recorder.watch('reference', self._hear_reference)
@@ -115,19 +116,15 @@ class SessionNode:
         self._context.try_shutdown()
 
     def _hear_state(self, data: bytes) -> None:
-        self.state = read_safety_state(decode(data, TOPICS['safety/state'].message_type))
+        self.state = self._read['safety/state'](data)
         self._since_s = time.monotonic()
 
     def _hear_diagnostics(self, data: bytes) -> None:
-        topic = TOPICS['/diagnostics']
-        for event in events_of(topic.read(decode(data, topic.message_type), JointNames((), ()))):
+        for event in events_of(self._read['/diagnostics'](data)):
             if event.stop_category is not None:
                 self.cause = event.cause
 
     def _hear_reference(self, data: bytes) -> None:
-        try:
-            reference = decode_reference(data)
-        except MessageError:
-            return
+        reference = self._read['reference'](data)
         if reference is not None and self.reference is None:
             self.reference = reference

@@ -1,5 +1,6 @@
 """Node ``state_estimator``: measurements in, odometry, disturbance and payload out."""
 
+from operator import attrgetter
 import sys
 import time
 from typing import Any
@@ -12,6 +13,7 @@ from suspended_ctrl.nodes.managed import ManagedNode
 from suspended_ctrl.nodes.parameters import NodeParameters
 from suspended_ctrl.nodes.run import run_node
 from suspended_ctrl.physics.values import Estimate
+from suspended_ctrl.review.messages import Disturbance
 
 NAME = 'state_estimator'
 # The payload is sent when it changes, and this often for those who come later.
@@ -63,6 +65,8 @@ class StateEstimator(ManagedNode):
             self.loop.stepped()
         for box in self._others:
             samples += box.empty()
+        # A pose is older than what came with it; out of order the filter would have to go back.
+        samples.sort(key=attrgetter('stamp_s'))
         started = time.perf_counter()
         outputs = self.part.step(t, EstimatorInputs(tuple(samples)))
         self.health.stepped(time.perf_counter() - started)
@@ -77,7 +81,9 @@ class StateEstimator(ManagedNode):
 
     def _send(self, t: float, estimate: Estimate) -> None:
         # Whoever steps on odometry finds the other two there already.
-        self._disturbance.send(estimate)
+        self._disturbance.send(Disturbance(
+            estimate.stamp_s, estimate.disturbance_force_map_n,
+            estimate.disturbance_torque_map_nm))
         if estimate.payload.mass_kg != self._payload_kg or t >= self._payload_due_s:
             self._payload_kg = estimate.payload.mass_kg
             self._payload_due_s = t + _PAYLOAD_EVERY_S
