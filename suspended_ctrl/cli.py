@@ -18,6 +18,7 @@ from contextlib import contextmanager
 from dataclasses import replace
 from pathlib import Path
 import sys
+import tempfile
 from typing import TYPE_CHECKING
 
 from suspended_ctrl import __version__
@@ -126,7 +127,7 @@ def _rehearse(options: argparse.Namespace) -> int:
     folder = _new_folder(options, mission.mission.file.name)
     check_out(folder)
     if options.ros:
-        return _through_graph(options, mission, folder, settings)
+        return _through_graph(options, mission, faults, folder, settings)
     return _in_process(options, mission, faults, folder, settings)
 
 
@@ -165,6 +166,42 @@ def _in_process(options: argparse.Namespace, mission: 'TimedMission', faults: 'S
     with _progress_bar(mission.mission.file.name) as progress:
         log = rehearsal.run(progress)
     return _judge(log, mission, folder)
+
+
+def _through_graph(options: argparse.Namespace, mission: 'TimedMission',
+                   faults: 'Sequence[Fault]', folder: Path, settings: 'LoopSettings') -> int:
+    from suspended_ctrl.review.bag_read import read_bag
+    from suspended_ctrl.review.topics import JointNames
+
+    try:
+        from suspended_ctrl.nodes.session import run_session, SessionError, SessionSettings
+    except ImportError as error:
+        print(f'no ROS 2 here ({error}): run `make setup`, or source a ROS 2 Jazzy',
+              file=sys.stderr)
+        return COULD_NOT_RUN
+    control = {key: getattr(settings.control, key) for key in ('bandwidth_hz', 'damping_ratio')}
+    session = SessionSettings(
+        rig=options.rig, law=settings.control.law, allocator=settings.effort.allocator,
+        seed=options.seed, mismatch=options.mismatch, faults=options.faults,
+        wind_m_s=options.wind_m_s, plant=options.plant, namespace=options.namespace,
+        wait_s=options.wait_s, overrides={'wrench_controller': control})
+    rig = mission.mission.rig
+    folder.absolute().parent.mkdir(parents=True, exist_ok=True)
+    with tempfile.TemporaryDirectory(prefix=f'.{folder.name}.',
+                                     dir=folder.absolute().parent) as work:
+        recording = Path(work) / 'run'
+        try:
+            with _progress_bar(mission.mission.file.name) as progress:
+                ended = run_session(mission, session, recording, tuple(faults), progress)
+        except SessionError as error:
+            print(error, file=sys.stderr)
+            return COULD_NOT_RUN
+        log = read_bag(recording, JointNames(rig.rotors.names, rig.carrier.axes))
+        code = _judge(log, mission, folder, recording)
+    if ended.kind == 'interrupted':
+        print('interrupted', file=sys.stderr)
+        return INTERRUPTED
+    return code
 
 
 def _judge(log: 'RunLog', mission: 'TimedMission', folder: Path,

@@ -57,7 +57,7 @@ class EffortSettings:
 
     """
 
-    allocator: str = 'priority_qp'
+    allocator: str = 'horizon_qp'
     transport_s: float = 0.0045
     tick_s: float = 0.005
     lag_gain: float = 1.3
@@ -142,7 +142,8 @@ class EffortAllocator:
         rotors = self.rig.rotors
         command = led_command(self._rotors.speed_rad_s, target, rotors.speed_min_rad_s,
                               rotors.speed_max_rad_s, self._reversible, self.settings.lag_gain)
-        command = np.where(seen.healthy, command, 0.0)
+        # What is out is asked for its least speed: only by following that does it come back in.
+        command = np.where(seen.healthy, command, rotors.speed_min_rad_s)
         self._rotors.commanded(command)
         self._note_rate(command)
         achieved = self._achieved(stamp, seen, target)
@@ -150,7 +151,7 @@ class EffortAllocator:
         carrier = self._carrier_command(stamp, allocation)
         diagnostics = {'fallbacks': float(self._fallbacks),
                        'bad_demands': float(self._bad_demands),
-                       'rotors_out': float((~seen.healthy).sum()), **allocation.diagnostics}
+                       'rotors_out': float(np.logical_not(seen.healthy).sum()), **allocation.diagnostics}
         return EffortOutputs(RotorCommand(stamp, command), carrier, allocation.plan, achieved,
                              diagnostics)
 

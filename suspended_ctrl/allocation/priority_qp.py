@@ -52,8 +52,8 @@ class RotorShare:
         self._sense.note(t, inputs, wrench, self._qp, answer)
         return answer.thrust_n, None, {
             'lateral_given_up_n': float(
-                max(0.0, np.linalg.norm(wrench[:3] - along * (along @ wrench[:3]))
-                    - solution['lateral'])),
+                max(0.0, float(np.linalg.norm(wrench[:3] - along * (along @ wrench[:3])))
+                    - float(solution['lateral']))),
             'qp_iterations': float(solution.iterations),
             'qp_residual': max(solution.primal_residual, solution.dual_residual, solution.gap)}
 

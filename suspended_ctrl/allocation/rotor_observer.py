@@ -22,11 +22,16 @@ from suspended_ctrl.rig.rig import Rotors
 # Share of a telemetry error taken into the model each sample: 1 % noise comes through at 0.1 %,
 # while a lag known wrong by a fifth leaves 10 % of a step's size for under a tenth of a second.
 _GAIN = 0.03
-# A rotor counts as not following when it is off by this much for this many samples in a row:
-# beyond 6 sigma of 1 % noise at any speed, and what a lag 20 % wrong leaves of a full step.
-_OFF_RAD_S = 60.0
+# A rotor counts as not following when it is this far outside everything that the model went
+# through lately, for this many samples in a row: beyond 6 sigma of 1 % noise at any speed, and
+# what a lag 20 % wrong leaves of a full step. On a busy host commands and telemetry come late by
+# tens of milliseconds, hence the window; a dead rotor leaves it all the same.
+_OFF_RAD_S = 40.0
 _OFF_SHARE = 0.08
-_OFF_SAMPLES = 5
+_OFF_SAMPLES = 3
+_WINDOW_S = 0.060
+# Following again for this long, a rotor is taken back in.
+_BACK_SAMPLES = 60
 _KEPT = 48
 
 
@@ -46,6 +51,20 @@ def _at(t: float, times: Array, speeds: Array) -> Array:
     return out
 
 
+@kernel(OUT_VECTOR(REAL, VECTOR, OUT_MATRIX, VECTOR))
+def _outside(since: float, times: Array, speeds: Array, measured: Array) -> Array:
+    """How far each measured speed is outside what the model went through from ``since`` on."""
+    out = np.empty(measured.shape[0])
+    for i in range(out.shape[0]):
+        low, high = np.inf, -np.inf
+        for k in range(times.shape[0]):
+            if times[k] >= since:
+                low = min(low, speeds[k, i])
+                high = max(high, speeds[k, i])
+        out[i] = max(low - measured[i], measured[i] - high, 0.0)
+    return out
+
+
 class RotorObserver:
     """
     Speed of every rotor at the moment when the next command reaches the drives.
@@ -60,7 +79,7 @@ class RotorObserver:
     ----------
     speed_rad_s : ndarray, shape (n,)
     healthy : ndarray of bool, shape (n,)
-        False from the tick on in which a rotor was found not to follow.
+        False from the tick on in which a rotor was found not to follow, until it follows again.
     measured_rad_s : ndarray, shape (n,)
         Last telemetry; zero before the first.
 
@@ -106,13 +125,17 @@ class RotorObserver:
             self.measured_rad_s = measured
             return
         error = measured - _at(sample.stamp_s, self._times, self._speeds)
-        off = np.abs(error) > _OFF_RAD_S + _OFF_SHARE * np.abs(measured)
-        self._off = np.where(off, self._off + 1, 0)
-        self.healthy = self.healthy & (self._off < _OFF_SAMPLES)
+        outside = _outside(sample.stamp_s - _WINDOW_S, self._times, self._speeds, measured)
+        off = outside > _OFF_RAD_S + _OFF_SHARE * np.abs(measured)
+        # Counts up while off, from below zero while a rotor that was out follows again.
+        self._off = np.where(off, np.maximum(self._off, 0) + 1, np.minimum(self._off, 0) - 1)
+        self.healthy = np.where(self.healthy, self._off < _OFF_SAMPLES,
+                                self._off < -_BACK_SAMPLES)
         self.measured_rad_s = measured
-        # What failed is followed as measured; its model means nothing any more.
-        self.speed_rad_s = np.where(self.healthy, self.speed_rad_s + _GAIN * error, measured)
-        self._speeds += _GAIN * error
+        # The model of a rotor that is out is left alone: it must come to the model to be believed.
+        taken = np.where(self.healthy, _GAIN * error, 0.0)
+        self.speed_rad_s = self.speed_rad_s + taken
+        self._speeds += taken
 
     def commanded(self, speed_rad_s: Array) -> None:
         """Note the command of this step."""

@@ -218,8 +218,9 @@ def canonical(problem: cp.Problem) -> Canonical:
     needed = np.concatenate([np.full(slot.index.size, sign)
                              for slot, sign in zip(slots, signs, strict=True)] or [np.zeros(0)])
     sign = -1.0 if isinstance(problem.objective, cp.Maximize) else 1.0
-    probes[2] = Affine(sign * probes[2].constant, sign * probes[2].slope)
-    return Canonical(*probes, slots, variables, sign, needed)
+    p, q, r, equal, equal_side, rows, side = probes
+    r = Affine(sign * r.constant, sign * r.slope)
+    return Canonical(p, q, r, equal, equal_side, rows, side, slots, variables, sign, needed)
 
 
 def _probe(problem: cp.Problem, parameters: list[cp.Parameter],

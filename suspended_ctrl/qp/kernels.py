@@ -2,6 +2,7 @@
 
 from numba import types
 import numpy as np
+from numpy.typing import NDArray
 
 from suspended_ctrl.physics.kernel import (
     INTEGER,
@@ -15,11 +16,12 @@ from suspended_ctrl.physics.kernel import (
 )
 from suspended_ctrl.rig.frozen import Array
 
+Index = NDArray[np.int64]
 INDEX = types.Array(types.int64, 1, 'C', readonly=True)
 
 
 @kernel(types.void(VECTOR, INDEX, INDEX, INDEX, VECTOR, VECTOR, OUT_VECTOR))
-def evaluate(theta: Array, entry: Array, start: Array, column: Array, slope: Array,
+def evaluate(theta: Array, entry: Index, start: Index, column: Index, slope: Array,
              constant: Array, out: Array) -> None:
     """
     Fill the entries of ``out`` that depend on parameters.
@@ -46,7 +48,7 @@ def evaluate(theta: Array, entry: Array, start: Array, column: Array, slope: Arr
 
 
 @kernel(types.void(INDEX, INDEX, VECTOR, MATRIX, OUT_MATRIX))
-def condense_quadratic(row: Array, column: Array, value: Array, basis: Array,
+def condense_quadratic(row: Index, column: Index, value: Array, basis: Array,
                        out: Array) -> None:
     """Fill ``out`` (nw, nw) with E'PE, P given by its nonzero places and values."""
     width = basis.shape[1]
@@ -65,7 +67,7 @@ def condense_quadratic(row: Array, column: Array, value: Array, basis: Array,
 
 
 @kernel(REAL(INDEX, INDEX, VECTOR, MATRIX, VECTOR, VECTOR, REAL, OUT_VECTOR))
-def condense_linear(row: Array, column: Array, value: Array, basis: Array, offset: Array,
+def condense_linear(row: Index, column: Index, value: Array, basis: Array, offset: Array,
                     linear: Array, constant: float, out: Array) -> float:
     """Fill ``out`` (nw,) with E'(P e + q) and return 1/2 e'Pe + q'e + r."""
     count, width = basis.shape
