@@ -151,7 +151,8 @@ class EffortAllocator:
         carrier = self._carrier_command(stamp, allocation)
         diagnostics = {'fallbacks': float(self._fallbacks),
                        'bad_demands': float(self._bad_demands),
-                       'rotors_out': float(np.logical_not(seen.healthy).sum()), **allocation.diagnostics}
+                       'rotors_out': float(np.logical_not(seen.healthy).sum()),
+                       **allocation.diagnostics}
         return EffortOutputs(RotorCommand(stamp, command), carrier, allocation.plan, achieved,
                              diagnostics)
 

@@ -75,7 +75,7 @@ class SpinSense:
 
     def note(self, t: float, inputs: AllocationInputs, wrench: Array, qp: RotorQp,
              answer: RotorAnswer) -> None:
-        """Look whether another sense would pay, from this tick's problem and its answer."""
+        """Look at ``t`` whether another sense would pay, from this tick's ``qp`` and its answer."""
         if not self._any or t - self._changed_at < _STAY_S:
             return
         cost = answer.solution.objective

@@ -240,7 +240,7 @@ def linearise(x: Array, u: Array, c: Array, t: float, s: Array, j: Array, r: Arr
 
 @kernel(types.void(VECTOR, VECTOR, VECTOR, REAL, OUT_VECTOR))
 def evaluate(x: Array, u: Array, c: Array, t: float, s: Array) -> None:
-    """Write ``s`` of ``linearise`` without the derivative."""
+    """Write ``s`` of ``linearise`` for the same ``x``, ``u``, ``c`` and ``t``, no derivative."""
     _model(x, u, c, t, s, np.empty((6, 24)), np.empty((3, 3)), False)
 
 

@@ -50,7 +50,7 @@ def evaluate(theta: Array, entry: Index, start: Index, column: Index, slope: Arr
 @kernel(types.void(INDEX, INDEX, VECTOR, MATRIX, OUT_MATRIX))
 def condense_quadratic(row: Index, column: Index, value: Array, basis: Array,
                        out: Array) -> None:
-    """Fill ``out`` (nw, nw) with E'PE, P given by its nonzero places and values."""
+    """Fill ``out`` (nw, nw) with E'PE, E the ``basis``, P by its nonzero places and values."""
     width = basis.shape[1]
     for a in range(width):
         for b in range(width):
@@ -69,7 +69,11 @@ def condense_quadratic(row: Index, column: Index, value: Array, basis: Array,
 @kernel(REAL(INDEX, INDEX, VECTOR, MATRIX, VECTOR, VECTOR, REAL, OUT_VECTOR))
 def condense_linear(row: Index, column: Index, value: Array, basis: Array, offset: Array,
                     linear: Array, constant: float, out: Array) -> float:
-    """Fill ``out`` (nw,) with E'(P e + q) and return 1/2 e'Pe + q'e + r."""
+    """
+    Fill ``out`` (nw,) with E'(P e + q) and return 1/2 e'Pe + q'e + r.
+
+    E is ``basis``, e ``offset``, q ``linear``, r ``constant``; P by nonzero places and values.
+    """
     count, width = basis.shape
     pushed = linear.copy()
     half = constant

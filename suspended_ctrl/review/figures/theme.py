@@ -62,7 +62,7 @@ def new_figure(height_px: float) -> Figure:
 
 def place(figure: Figure, left: float, top: float, width: float, height: float,
           **options: object) -> Axes:
-    """Axes in pixels from the figure's upper left corner."""
+    """Axes in pixels, ``left`` and ``top`` from the figure's upper left corner."""
     across, down = figure.get_size_inches() * _PIXELS_PER_INCH
     axes = figure.add_axes(
         (left / across, 1.0 - (top + height) / down, width / across, height / down),
