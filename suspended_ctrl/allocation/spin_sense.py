@@ -75,7 +75,7 @@ class SpinSense:
 
     def note(self, t: float, inputs: AllocationInputs, wrench: Array, qp: RotorQp,
              answer: RotorAnswer) -> None:
-        """Look at ``t`` whether another sense would pay, from this tick's ``qp`` and its answer."""
+        """Look at ``t`` if another sense would pay, by this tick's ``qp`` and its answer."""
         if not self._any or t - self._changed_at < _STAY_S:
             return
         cost = answer.solution.objective
