@@ -7,7 +7,8 @@ graph; the parts are the same.
 
 from dataclasses import dataclass, field
 
-from suspended_ctrl.allocation.allocator import EffortAllocator, EffortSettings
+from suspended_ctrl.allocation.allocator import EffortAllocator
+from suspended_ctrl.allocation.settings import EffortSettings
 from suspended_ctrl.allocation.values import EffortInputs, EffortOutputs
 from suspended_ctrl.control.controller import ControlSettings, WrenchController
 from suspended_ctrl.control.values import ControlInputs, ControlOutputs

@@ -1,6 +1,6 @@
 """The effort allocator: everything that surrounds a strategy in a tick."""
 
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 
@@ -11,6 +11,7 @@ from suspended_ctrl.allocation.lag_inversion import led_command, reachable_speed
 from suspended_ctrl.allocation.pseudo_inverse import PseudoInverse
 from suspended_ctrl.allocation.rotor_observer import RotorObserver
 from suspended_ctrl.allocation.rotor_qp import rotor_wrench_wanted
+from suspended_ctrl.allocation.settings import EffortSettings
 from suspended_ctrl.allocation.swap import swap_refusal
 from suspended_ctrl.allocation.values import (
     Allocation,
@@ -37,30 +38,6 @@ from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Rig
 
 TURNING = ('live', 'holding', 'stopping')
-
-
-@dataclass(frozen=True)
-class EffortSettings:
-    """
-    Settings of the allocator.
-
-    Attributes
-    ----------
-    allocator : str
-        Name of a strategy.
-    transport_s : float
-        From the allocator's step to the drives, half a tick of hold included.
-    tick_s : float
-        Between two steps, as a rule.
-    lag_gain : float
-        Lag inversion: commands lead by this factor.
-
-    """
-
-    allocator: str = 'horizon_qp'
-    transport_s: float = 0.0045
-    tick_s: float = 0.005
-    lag_gain: float = 1.3
 
 
 class EffortAllocator:

@@ -2,17 +2,16 @@
 
 import numpy as np
 
-from suspended_ctrl.physics.rotation import rotate
 from suspended_ctrl.physics.values import CarrierCommand, RotorCommand
 from suspended_ctrl.rig.frozen import Array, frozen
 from suspended_ctrl.rig.rig import Rig
 from suspended_ctrl.safety import rows
 from suspended_ctrl.safety.arrivals import Arrivals
+from suspended_ctrl.safety.figures import cut_figures, limit_figures, Values
 from suspended_ctrl.safety.limits import Limit, limit_table
 from suspended_ctrl.safety.sequence import next_state, ROTOR_POWER
 from suspended_ctrl.safety.settings import SafetySettings
 from suspended_ctrl.safety.shares import Shares
-from suspended_ctrl.safety.swing import predict_cut
 from suspended_ctrl.safety.values import (
     Reply,
     SafetyEvent,
@@ -24,7 +23,6 @@ from suspended_ctrl.safety.values import (
 # Limits that need an inertial sensor for a controlled stop: without one they are cut at once.
 _BLIND = frozenset((rows.POSE_STALE, rows.POSE_REJECTED, rows.ESTIMATOR_INCONSISTENT))
 
-Values = tuple[tuple[str, float], ...]
 
 
 class SafetySupervisor:
@@ -180,7 +178,7 @@ class SafetySupervisor:
             self._raised[i] = category
             values = self._figures(i)
             if k == 0 and category == 0:
-                values += self._cut_figures()
+                values += cut_figures(self._rig, self._seen)
             cause = self.limits[i].name
             self._events.append(SafetyEvent(t, cause, category, values))
             if k == 0:
@@ -223,6 +221,10 @@ class SafetySupervisor:
             self._go(t, 'rest_latched' if latched else 'rest', latched[0] if latched else 'stop',
                      (('speed_m_s', speed), ('rate_rad_s', rate)))
 
+    def _figures(self, i: int) -> Values:
+        return limit_figures(self._rig, self._seen, i, self.limits[i],
+                             float(self._shares.used[i]))
+
     # ------------------------------------------------------------ requests
 
     def _answer(self, t: float, request: str) -> Reply:
@@ -264,35 +266,6 @@ class SafetySupervisor:
         if self.state == 'locked':
             self._check(t, int(self._broken.max()))
         return Reply('reset', True, f'state is {self.state}')
-
-    # ------------------------------------------------------------ figures
-
-    def _figures(self, i: int) -> Values:
-        limit = self.limits[i]
-        share = float(self._shares.used[i])
-        figure = limit.limit / share if limit.lower else limit.limit * share
-        values: Values = ((f'measured_{limit.unit}', figure), (f'limit_{limit.unit}', limit.limit))
-        if i == rows.ROTOR_NOT_FOLLOWING:
-            rotors = self._seen.rotors
-            name = self._rig.rotors.names[rotors.worst]
-            values += ((f'{name}_measured_rad_s', float(rotors.measured_rad_s[rotors.worst])),
-                       (f'{name}_expected_rad_s', float(rotors.expected_rad_s[rotors.worst])))
-        return values
-
-    def _cut_figures(self) -> Values:
-        """Swing that a cut leaves behind, as far as the last odometry knows."""
-        motion, anchor = self._seen.motion, self._seen.anchor.anchor
-        if not self._seen.motion_known:
-            return ()
-        thrust = rotate(motion[6:10], self._seen.rotors.thrust_body_n)
-        swing = predict_cut(self._rig, motion[:3], motion[3:6], anchor[:3], thrust)
-        return (('swing_radius_m', swing.radius_m),
-                *((f'swing_{axis}_{end}_m', float(box[k]))
-                  for end, box in (('min', swing.lower_map_m), ('max', swing.upper_map_m))
-                  for k, axis in enumerate('xyz')),
-                ('swing_tension_min_n', swing.tension_min_n),
-                ('swing_tension_max_n', swing.tension_max_n),
-                ('swing_leaves_keep_in', float(swing.leaves_keep_in)))
 
     # ------------------------------------------------------------ commands
 
