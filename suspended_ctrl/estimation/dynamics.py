@@ -2,7 +2,6 @@
 Motion of the platform as the filter believes it, and its derivatives.
 
 Flat vectors keep the calls cheap; every kernel of the filter reads them by the same places.
-
 State ``x`` (25): position 0:3 and velocity 3:6 of the centre of mass (map), quaternion 6:10, rate
 10:13 (body), gyroscope bias 13:16, accelerometer bias 16:19 (body), disturbance force 19:22 (map),
 disturbance torque 22:25 (body).
