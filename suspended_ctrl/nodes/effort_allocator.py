@@ -10,9 +10,10 @@ from pydantic import Field
 from rcl_interfaces.msg import SetParametersResult
 from rclpy.parameter import Parameter
 
-from suspended_ctrl.allocation.allocator import EffortAllocator, EffortSettings
+from suspended_ctrl.allocation.allocator import EffortAllocator
 from suspended_ctrl.allocation.allocators import Allocator, ALLOCATORS, PlanningAllocator
 from suspended_ctrl.allocation.carrier_plan import HORIZON_S, PlanRequest
+from suspended_ctrl.allocation.settings import EffortSettings
 from suspended_ctrl.allocation.values import EffortInputs
 from suspended_ctrl.nodes.estimate_inbox import EstimateInbox
 from suspended_ctrl.nodes.managed import ManagedNode

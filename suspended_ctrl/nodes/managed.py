@@ -51,9 +51,12 @@ class ManagedNode(LifecycleNode):
         self._inboxes: list[Inbox] = []
         self._outboxes: list[Outbox] = []
         self.health = Health(self.get_fully_qualified_name())
-        self.diagnostics = Outbox(self, '/diagnostics', self._names, always=True)
-        self._report_s = time.monotonic() + _REPORT_EVERY_S
         self.loop = Loop(self, self._turn, self._serve)
+        self.diagnostics = Outbox(self, '/diagnostics', self._names, always=True)
+        # The first message of a kind has its layout looked up, which takes tenths of a second:
+        # not while the rig hangs on this node's ticks.
+        self._report()
+        self._report_s = time.monotonic() + _REPORT_EVERY_S
 
     # ------------------------------------------------------------ for subclasses
 
@@ -204,6 +207,9 @@ class ManagedNode(LifecycleNode):
         if now < self._report_s:
             return
         self._report_s = max(self._report_s + _REPORT_EVERY_S, now)
+        self._report()
+
+    def _report(self) -> None:
         self.health.late = self.loop.late
         state = 'active' if self.active else 'inactive'
         self.diagnostics.send(

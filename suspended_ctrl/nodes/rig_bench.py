@@ -32,6 +32,10 @@ _TOPICS: dict[type, str] = {
     EmergencyStopSample: 'emergency_stop'}
 _TRUTH_EVERY_S = 0.005
 _PARTS_OF_TRUTH_EVERY_S = 0.02
+# Measurements go out in bursts, so that each wakes its receivers once; this often at least, and
+# timed so that a pose arrives this much before the burst that takes it along.
+_BURSTS_HZ = 200.0
+_BEFORE_BURST_S = 0.0005
 # What is caught up with in one turn, and how far behind time is given up.
 _CATCH_UP_S = 0.02
 _GIVE_UP_S = 0.25
@@ -80,18 +84,24 @@ class RigBenchNode(ManagedNode):
         self._out = {topic: self.outbox(topic) for topic, is_there in there.items() if is_there}
         self._gave_up = 0
         self._truth_due_s = self._parts_due_s = 0.0
-        self.loop.listen([self._rotors], self.part.step_s, timer=True)
+        self._period_s = 1.0 / max(sensors.pose.rate_hz, _BURSTS_HZ)
+        self.loop.listen([self._rotors], self._period_s, timer=True)
 
     def start(self) -> None:
-        """Set the bench's clock going."""
-        self._origin_s = time.monotonic() - self.part.t_s
+        """Let the bench's clock go with the next turn."""
+        self._origin_s: float | None = None
 
     def turn(self, t: float, due: bool) -> None:
         """Bring the bench up to now, hand it what came, publish what it measured."""
         bench = self.part
+        if self._origin_s is None:
+            if not due:
+                return
+            self._origin_s = time.monotonic() - bench.t_s - _BEFORE_BURST_S - (
+                self.rig.sensors.pose.latency_s % self._period_s)
         commands = self._rotors.empty()
         carrier = self._carrier.newest() if self._carrier else None
-        now = self._now(t)
+        now = self._now(self._origin_s)
         # Host time of the bench's zero: measurements are stamped in the host's clock.
         epoch_s = t - now
         bench.advance(now)
@@ -100,20 +110,21 @@ class RigBenchNode(ManagedNode):
         if carrier is not None:
             bench.command_carrier(now, carrier.position_m, carrier.velocity_m_s)
         self._follow_mission(epoch_s)
-        self._measure(now, epoch_s)
+        if due:
+            self._measure(now, epoch_s)
 
-    def _now(self, t: float) -> float:
+    def _now(self, origin_s: float) -> float:
         """Bench time: the wall clock's, but never more than a little ahead of where it is."""
-        bench_s = self.part.t_s
-        now = time.monotonic() - self._origin_s
-        behind = now - bench_s
+        reached_s = self.part.t_s
+        behind = time.monotonic() - origin_s - reached_s
         if behind > _GIVE_UP_S:
             self._gave_up += 1
-            self._origin_s += behind - _CATCH_UP_S
+            origin_s += behind - _CATCH_UP_S
+            self._origin_s = origin_s
             self.get_logger().warning(
                 f'{behind:.2f} s behind the wall clock: this machine is too busy, gave time up',
                 throttle_duration_sec=1.0)
-        return min(time.monotonic() - self._origin_s, bench_s + _CATCH_UP_S)
+        return min(time.monotonic() - origin_s, reached_s + _CATCH_UP_S)
 
     def _follow_mission(self, epoch_s: float) -> None:
         for reference in self._reference.empty():
