@@ -5,17 +5,11 @@ Exit codes: 0 done and accepted, 1 done and not accepted, 2 bad input, 3 could n
 interrupted.
 """
 
-import os
-
-# Small matrices only: threads of the linear algebra library cost more than they bring, and it
-# reads this when it is loaded.
-os.environ.setdefault('OPENBLAS_NUM_THREADS', '1')
-os.environ.setdefault('OMP_NUM_THREADS', '1')
-
 import argparse
 from collections.abc import Callable, Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import replace
+import os
 from pathlib import Path
 import sys
 import tempfile
@@ -266,6 +260,10 @@ def main(arguments: Sequence[str] | None = None) -> int:
         The exit code.
 
     """
+    # Small matrices only: threads of the linear algebra library cost more than they bring. It
+    # reads this when it is loaded, which the commands below do.
+    for variable in ('OPENBLAS_NUM_THREADS', 'OMP_NUM_THREADS'):
+        os.environ.setdefault(variable, '1')
     try:
         options = build_parser().parse_args(arguments)
         code: int = options.run(options)

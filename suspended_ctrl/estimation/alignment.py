@@ -62,6 +62,7 @@ def align(settings: EstimatorSettings, stamps_s: Array, positions: Array, quater
     Parameters
     ----------
     settings : EstimatorSettings
+        Figures that the caller chose.
     stamps_s : ndarray, shape (k,)
         Of the poses, rising.
     positions, quaternions : ndarray, shape (k, 3) and (k, 4)

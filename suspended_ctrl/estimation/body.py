@@ -49,6 +49,7 @@ def build_body(rig: Rig | None, payload: Payload) -> BodyModel:
     rig : Rig or None
         None is a body of unit mass and inertia that nothing is known to push.
     payload : Payload
+        What hangs on the platform.
 
     Returns
     -------

@@ -25,6 +25,7 @@ def correct(p: Array, h: Array, nu: Array, noise: Array, common: Array, drift: A
     p : ndarray, shape (24, 24)
         Covariance, changed in place if absorbed; stays symmetric to the last bit.
     h : ndarray, shape (m, 24)
+        Derivative of what is measured by the errors.
     nu : ndarray, shape (m,)
         Innovation.
     noise : ndarray, shape (m, m)

@@ -74,6 +74,7 @@ def step_matrix(r: Array, j: Array, s: Array, rate: Array, dt: float, f: Array, 
     rate : ndarray, shape (3,)
         Body, rad/s.
     dt : float
+        Length of the step, s.
     f : ndarray, shape (6, 24)
         Out: rows of velocity and rate.
     e : ndarray, shape (3, 3)
@@ -128,6 +129,7 @@ def spread(p: Array, lag: Array, r: Array, j: Array, s: Array, rate: Array, c: A
     c, n : ndarray
         Body and densities.
     dt : float
+        Length of the step, s.
     work : ndarray, shape (12, 24)
         Scratch.
 

@@ -107,6 +107,7 @@ class Estimator(SampleIntake):
         t : float
             Now, s.
         inputs : EstimatorInputs
+            What arrived since the last step.
 
         Returns
         -------
@@ -139,7 +140,7 @@ class Estimator(SampleIntake):
 
     @property
     def message(self) -> str:
-        """What people should know, or nothing."""
+        """Say what people should know, or nothing."""
         if self.offset_found:
             return f'pose stamps off by {1e3 * self._horizon.filter.offset_s:.1f} ms'
         return self._message

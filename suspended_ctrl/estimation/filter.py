@@ -94,6 +94,7 @@ class ErrorStateFilter(MovingState):
         Parameters
         ----------
         rate, force : ndarray, shape (3,)
+            Body axes, rad/s and m/s^2.
 
         Returns
         -------

@@ -73,13 +73,16 @@ class Guard:
     def vectors(self, kind: int, t: float, first: ArrayLike, size: int,
                 second: ArrayLike = (), second_size: int = 0) -> tuple[Array, Array] | None:
         """
-        Copies of a sample's one or two vectors, or None if it is not what it should be.
+        Copy a sample's one or two vectors; None if it is not what it should be.
 
         Parameters
         ----------
         kind : int
+            Of the sample, see ``timeline``.
         t : float
+            Its stamp, s.
         first, second : array_like
+            What it holds; the second may be left out.
         size, second_size : int
             Lengths that they must have.
 

@@ -60,7 +60,7 @@ class Horizon:
 
     @property
     def oldest_s(self) -> float:
-        """Samples with stamps before this come too late."""
+        """Return the stamp before which samples come too late."""
         return self._snapshots[0].t if self._snapshots else -np.inf
 
     def begin(self, imu: bool) -> None:

@@ -43,9 +43,11 @@ def track(z: Array, measured: Array, dt: float, alpha: float, beta: float) -> No
     z : ndarray, shape (2 n,)
         Values, then their rates.
     measured : ndarray, shape (n,)
+        The new sample.
     dt : float
         Since the last sample, s, above zero.
     alpha, beta : float
+        Gains on value and rate.
 
     """
     n = measured.shape[0]

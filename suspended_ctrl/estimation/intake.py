@@ -88,7 +88,9 @@ class SampleIntake:
         t : float
             Stamp, s.
         position : array_like, shape (3,)
+            Where it is, m.
         quaternion_wxyz : array_like, shape (4,)
+            Its attitude, body to map.
 
         Returns
         -------

@@ -29,6 +29,7 @@ def take_load(state: ErrorStateFilter, loaded: Callable[[Payload], BodyModel],
     Parameters
     ----------
     state : ErrorStateFilter
+        The filter.
     loaded : callable
         Body that carries a payload.
     payload : Payload

@@ -185,7 +185,7 @@ class MovingState:
                      self.body.vector, self.u, self.noise)
 
     def anchor(self, t: float, position: Array) -> None:
-        """Take the measured anchor (map) as input from ``t`` on."""
+        """Take where the anchor was measured, in map, as input from ``t`` on."""
         age = t - float(self.u[21])
         if 0.0 < age < ANCHOR_RESTART_S:
             track(self.u[:6], position, age, *self._carrier_gains)

@@ -83,6 +83,7 @@ def estimate_of(state: ErrorStateFilter) -> Estimate:
     Parameters
     ----------
     state : ErrorStateFilter
+        The filter.
 
     Returns
     -------

@@ -72,7 +72,7 @@ class EstimatorSettings:
 
 
 def settings_for(rig: Rig) -> EstimatorSettings:
-    """Settings from what the rig file says of its sensors."""
+    """Derive settings from what the rig file says of its sensors."""
     pose, imu = rig.sensors.pose, rig.sensors.imu
     rotors = rig.sensors.rotor_states
     values = {} if imu is None else {

@@ -23,6 +23,7 @@ def try_start(line: Timeline, settings: EstimatorSettings,
     line : Timeline
         Samples so far; those before the window are dropped.
     settings : EstimatorSettings
+        Figures that the caller chose.
     state : ErrorStateFilter
         Set to the beginning of the window if all is well.
 

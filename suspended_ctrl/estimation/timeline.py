@@ -66,6 +66,6 @@ class Timeline:
         self.taken = 0
 
     def between(self, first: int, until_s: float) -> list[tuple[Key, Entry]]:
-        """Samples from index ``first`` on with stamps up to ``until_s``."""
+        """Return samples from index ``first`` on with stamps up to ``until_s``."""
         last = bisect_right(self.keys, (until_s, POSE))
         return list(zip(self.keys[first:last], self.entries[first:last], strict=True))

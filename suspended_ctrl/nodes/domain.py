@@ -106,6 +106,7 @@ def sweep(domain: int) -> None:
     Parameters
     ----------
     domain : int
+        ROS_DOMAIN_ID.
 
     """
     ports = _ports(domain)

@@ -45,6 +45,7 @@ class Health:
         state : str
             Of the node's lifecycle.
         inboxes : sequence of Inbox
+            Whose counts are told.
         fault : str
             Why it could not do what it was told last; empty if it could.
         notes : mapping of str to float

@@ -62,6 +62,7 @@ def descriptor(name: str, field: FieldInfo) -> ParameterDescriptor:
     Parameters
     ----------
     name : str
+        As in the graph.
     field : pydantic field
         Bounds, where there are any, are inclusive and given on both sides.
 
@@ -101,7 +102,9 @@ def check(model: type[_Model], given: Mapping[str, Any], where: str) -> _Model:
     Parameters
     ----------
     model : subclass of NodeParameters
+        The model of the parameters.
     given : mapping of str to object
+        Values as they came.
     where : str
         What holds them, for messages: a node's name or a file's.
 
@@ -140,6 +143,7 @@ def declare(node: Node, model: type[_Model]) -> _Model:
         Made with ``automatically_declare_parameters_from_overrides``: that is how values that
         nobody declared can be seen at all, rclpy ignores them otherwise.
     model : subclass of NodeParameters
+        The model of the parameters.
 
     Returns
     -------

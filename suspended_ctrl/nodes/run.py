@@ -43,6 +43,7 @@ def run_node(name: str, sentence: str, model: type[NodeParameters],
     name, sentence : str
         Of the executable, for ``--help``.
     model : subclass of NodeParameters
+        The model of the parameters.
     make : callable
         Gives the node; called once ROS is up.
 

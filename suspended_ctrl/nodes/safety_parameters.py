@@ -57,7 +57,7 @@ class SafetySupervisorParameters(NodeParameters):
 
 
 def settings_of(parameters: SafetySupervisorParameters, rig: Rig) -> SafetySettings:
-    """Settings of the supervisor for a rig."""
+    """Derive the supervisor's settings for a rig."""
     given = parameters.model_dump(exclude={'rig', 'activate', 'rate_hz', 'heartbeat_silence_s'})
     return SafetySettings.for_rig(
         rig, period_s=1.0 / parameters.rate_hz,

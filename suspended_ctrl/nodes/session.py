@@ -88,7 +88,9 @@ def run_session(mission: TimedMission, settings: SessionSettings, recording: Pat
     Parameters
     ----------
     mission : TimedMission
+        The mission, timed.
     settings : SessionSettings
+        Figures that the caller chose.
     recording : Path
         Folder of the recording; must not exist.
     faults : sequence of Fault

@@ -87,7 +87,7 @@ class SessionNode:
         return [name for name, client in self._clients.items() if not client.service_is_ready()]
 
     def silent_topics(self) -> list[str]:
-        """Required driver topics that nothing came on."""
+        """Name the required driver topics that nothing came on."""
         counts = self._recorder.counts()
         return [name for name in self._required if not counts[name]]
 

@@ -109,6 +109,7 @@ class SessionRun:
         bench : bool
             Whether the plant is ours.
         progress : callable
+            Called with the share done.
 
         Returns
         -------

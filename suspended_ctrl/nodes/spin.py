@@ -57,6 +57,7 @@ class Waiter:
         Parameters
         ----------
         timeout_s : float
+            Longest wait.
 
         Returns
         -------

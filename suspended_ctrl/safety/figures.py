@@ -17,10 +17,13 @@ def limit_figures(rig: Rig, seen: Arrivals, index: int, limit: Limit, share: flo
     Parameters
     ----------
     rig : Rig
+        What the hardware is.
     seen : Arrivals
+        What has reached the supervisor.
     index : int
         Row of the limit.
     limit : Limit
+        The limit itself.
     share : float
         Of the limit that is used.
 
@@ -47,7 +50,9 @@ def cut_figures(rig: Rig, seen: Arrivals) -> Values:
     Parameters
     ----------
     rig : Rig
+        What the hardware is.
     seen : Arrivals
+        What has reached the supervisor.
 
     Returns
     -------

@@ -24,7 +24,6 @@ from suspended_ctrl.safety.values import (
 _BLIND = frozenset((rows.POSE_STALE, rows.POSE_REJECTED, rows.ESTIMATOR_INCONSISTENT))
 
 
-
 class SafetySupervisor:
     """
     Last in the row, knows nothing of the others' insides, and fails to zero.

@@ -3,7 +3,7 @@
 from hypothesis import HealthCheck, note, settings
 from hypothesis.stateful import rule, RuleBasedStateMachine, run_state_machine_as_test
 import pytest
-from walk import Walk
+from random_walk import Walk
 from walk_events import do, EVENT, EVENTS, rig_of
 
 

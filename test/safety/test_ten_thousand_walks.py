@@ -3,7 +3,7 @@
 from hypothesis import given, HealthCheck, note, Phase, settings
 from hypothesis import strategies as st
 import pytest
-from walk import Walk
+from random_walk import Walk
 from walk_events import do, EVENT, EVENTS, rig_of
 
 

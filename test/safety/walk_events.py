@@ -5,7 +5,7 @@ import itertools
 
 from hypothesis import strategies as st
 import numpy as np
-from walk import ARRAYS, KINDS, REQUESTS, SENDERS, Walk, WEIRD
+from random_walk import ARRAYS, KINDS, REQUESTS, SENDERS, Walk, WEIRD
 
 from suspended_ctrl.rig.file import load_rig
 from suspended_ctrl.rig.rig import Rig
@@ -48,7 +48,7 @@ EVENT = st.integers(0, len(EVENTS) - 1)
 
 @lru_cache(maxsize=2)
 def rig_of(name: str) -> Rig:
-    """A reference rig, read once."""
+    """Read a reference rig, once."""
     return load_rig(name)
 
 

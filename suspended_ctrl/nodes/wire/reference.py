@@ -64,6 +64,7 @@ def decode_reference(data: bytes) -> Reference | None:
     Parameters
     ----------
     data : bytes
+        Bytes of the message, CDR.
 
     Returns
     -------

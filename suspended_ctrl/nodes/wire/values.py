@@ -34,7 +34,9 @@ def value_reader(topic: Topic, names: JointNames) -> ReadValue:
     Parameters
     ----------
     topic : Topic
+        As in ``review.topics``.
     names : JointNames
+        The rig's names of what travels as joints.
 
     Returns
     -------
@@ -118,7 +120,9 @@ def value_writer(topic: Topic, names: JointNames) -> WriteValue:
     Parameters
     ----------
     topic : Topic
+        As in ``review.topics``.
     names : JointNames
+        The rig's names of what travels as joints.
 
     Returns
     -------

@@ -45,6 +45,7 @@ def encode(message: Any, type_name: str) -> bytes:
     message : object
         With the type's fields as attributes.
     type_name : str
+        Such as ``geometry_msgs/msg/PoseStamped``.
 
     Returns
     -------
@@ -64,7 +65,7 @@ def writer(type_name: str) -> Write:
     if leaves and (size := one_size(leaves)) is not None:
         return _flat_writer(leaves, size)
     parts = [(name, _field_writer(node, argument))
-              for name, node, argument in fields(type_name)]
+             for name, node, argument in fields(type_name)]
 
     def write(body: bytearray, message: Any) -> None:
         for name, part in parts:

@@ -48,7 +48,7 @@ KINDS = ('pose', 'imu', 'rotors', 'carrier', 'load', 'odometry', 'rotor_demand',
 
 
 def junk(kind: str, stamp_s: object, a: object, b: object) -> object:
-    """A message of a kind whose content is anything."""
+    """Make a message of a kind whose content is anything."""
     matrix = a if isinstance(a, np.ndarray) and a.ndim == 2 else np.eye(12) * 1e-8
     return {
         'pose': PoseSample(stamp_s, a, b), 'imu': ImuSample(stamp_s, a, b),
