@@ -1,6 +1,6 @@
 """A node's parameters from its pydantic model: declared with type, range and sentence, checked."""
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any, get_args, TypeVar
 
 from annotated_types import Ge, Le
@@ -12,7 +12,8 @@ from rclpy.node import Node
 
 from suspended_ctrl.rig.errors import InputError
 from suspended_ctrl.rig.key_hints import unknown_key_hint
-from suspended_ctrl.rig.yaml_tree import value_text
+from suspended_ctrl.rig.yaml_file import read_text
+from suspended_ctrl.rig.yaml_tree import parse, value_text
 
 # Declared by rclpy for every node.
 RCLPY_PARAMETERS = ('use_sim_time', 'start_type_description_service')
@@ -167,3 +168,29 @@ def declare(node: Node, model: type[_Model]) -> _Model:
         except InvalidParameterTypeException as error:
             raise InputError(f'{node.get_name()}: {name}: {error}') from error
     return parameters
+
+
+def check_seen(files: Sequence[str], name: str, namespace: str) -> None:
+    """
+    See that nothing meant for a node stands where ROS does not look.
+
+    Parameters
+    ----------
+    files : sequence of str
+    name : str
+    namespace : str
+        Of the node; ``/`` for none.
+
+    Raises
+    ------
+    InputError
+        For a bare name, which ROS reads as a node without a namespace.
+
+    """
+    if namespace == '/':
+        return
+    for file in files:
+        tree = parse(read_text(file), file)
+        if name in tree.value or f'/{name}' in tree.value:
+            raise InputError(f'{file}: {name}: is ignored in namespace {namespace}: '
+                             f'/**/{name}')

@@ -2,6 +2,7 @@
 
 from collections.abc import Callable
 from contextlib import suppress
+from itertools import pairwise
 import os
 import signal
 import sys
@@ -14,7 +15,7 @@ from rclpy.signals import SignalHandlerOptions
 from rclpy.utilities import remove_ros_args
 
 from suspended_ctrl.nodes.managed import ManagedNode
-from suspended_ctrl.nodes.parameters import allowed, NodeParameters
+from suspended_ctrl.nodes.parameters import allowed, check_seen, NodeParameters
 from suspended_ctrl.nodes.parent import end_with_parent
 from suspended_ctrl.rig.errors import InputError
 
@@ -100,6 +101,7 @@ def _yield_to_others(name: str) -> None:
 def _live(name: str, make: Callable[[], ManagedNode], told: list[int]) -> int:
     try:
         node = make()
+        check_seen(_parameter_files(sys.argv), name, node.get_namespace())
     except (InputError, InvalidParameterException) as error:
         print(error, file=sys.stderr)
         return 2
@@ -115,6 +117,10 @@ def _live(name: str, make: Callable[[], ManagedNode], told: list[int]) -> int:
     finally:
         node.destroy_node()
     return 0
+
+
+def _parameter_files(words: list[str]) -> list[str]:
+    return [file for option, file in pairwise(words) if option == '--params-file']
 
 
 def _bring_up(node: ManagedNode) -> bool:

@@ -17,6 +17,7 @@ from suspended_ctrl.bench.fault_kinds import Fault
 from suspended_ctrl.mission.timing import TimedMission
 from suspended_ctrl.nodes.cautions import CAUTIONS
 from suspended_ctrl.nodes.domain import NoDomainError, own_domain
+from suspended_ctrl.nodes.parameter_files import check_file
 from suspended_ctrl.nodes.processes import Processes
 from suspended_ctrl.nodes.session_run import Ended, SessionRun
 from suspended_ctrl.review.log import RunFacts
@@ -234,12 +235,13 @@ def _arguments(mission: TimedMission, settings: SessionSettings, folder: Path) -
         own = wanted.setdefault(name, {})
         own |= {'rig': rig, 'activate': True}
         own |= (settings.overrides or {}).get(name, {})
+    parameters = find_file(settings.parameters, 'parameters')
+    check_file(parameters)
     file = folder / 'session.yaml'
     with file.open('w') as stream:
         YAML().dump({f'/**/{name}': {'ros__parameters': own} for name, own in wanted.items()},
                     stream)
-    words = ['--ros-args', '--params-file', str(find_file(settings.parameters, 'parameters')),
-             '--params-file', str(file)]
+    words = ['--ros-args', '--params-file', str(parameters), '--params-file', str(file)]
     if settings.namespace:
         words += ['-r', f'__ns:={_full(settings.namespace)}']
     return words

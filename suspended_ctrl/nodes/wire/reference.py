@@ -5,6 +5,7 @@ A reference has thousands of points. One by one they keep a controller for some 
 longer than the supervisor waits; every point has the same 184 bytes, so numpy takes them as rows.
 """
 
+import struct
 from typing import Any
 
 import numpy as np
@@ -81,7 +82,7 @@ def decode_reference(data: bytes) -> Reference | None:
     try:
         stamp, names, place, count = _head(data)
         rows = _rows(data, place, count)
-    except (ValueError, IndexError):
+    except (ValueError, IndexError, struct.error):
         rows = None
     if rows is None:
         # Whatever is wrong or unusual is said, or read, point by point.
