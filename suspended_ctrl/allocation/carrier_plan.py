@@ -12,6 +12,7 @@ from suspended_ctrl.allocation.horizon_problem import (
     horizon_maps,
     HorizonMaps,
 )
+from suspended_ctrl.allocation.wanted_anchor import wanted_anchor, wanted_height
 from suspended_ctrl.physics.values import CarrierPlan
 from suspended_ctrl.qp import CompiledQp
 from suspended_ctrl.rig.frozen import Array, frozen
@@ -37,8 +38,8 @@ class PlanRequest:
         When the plan takes effect: one period after the state it starts from.
     axis_m, axis_speed_m_s, setpoint_m, setpoint_speed_m_s : ndarray, shape (k,)
         Expected then.
-    wanted_m : ndarray, shape (h, k)
-        Readings from which the tether alone gives what the reference needs, ``HORIZON_S`` after.
+    needed : ndarray, shape (h, 6)
+        Hook (map, m) and force (map, N) that the reference asks for, ``HORIZON_S`` after.
 
     """
 
@@ -47,7 +48,7 @@ class PlanRequest:
     axis_speed_m_s: Array
     setpoint_m: Array
     setpoint_speed_m_s: Array
-    wanted_m: Array
+    needed: Array
 
 
 @dataclass(frozen=True, eq=False, slots=True)
@@ -94,6 +95,7 @@ class CarrierPlanner:
 
     def __init__(self, rig: Rig) -> None:
         self._carrier = rig.carrier
+        self._tether = rig.tether
         self._maps: dict[float, HorizonMaps] = {}
         self._problems: list[CompiledQp] = []
         for time_constant in rig.carrier.time_constant_s.tolist():
@@ -117,16 +119,27 @@ class CarrierPlanner:
             ``failure`` says so.
 
         """
-        columns, failure = [], None
-        for axis in range(len(self._carrier.axes)):
-            column, fault = self._planned(request, axis)
+        carrier, tether = self._carrier, self._tether
+        pull = (tether.rest_length_m, tether.stiffness_n_per_m, tether.slack_margin_n)
+        wanted = wanted_anchor(request.needed, *pull)
+        anchor = np.tile(carrier.anchor_m, (len(HORIZON_S), 1))
+        columns: list[Array] = []
+        failure = None
+        # The hoist comes last: how high it should be depends on where the others get to.
+        for axis, direction in enumerate(carrier.direction_map):
+            if carrier.axes[axis] == 'hoist':
+                wanted[:, 2] = wanted_height(request.needed, anchor, *pull)
+            reading = (wanted - carrier.anchor_m) @ direction - carrier.zero_offset_m[axis]
+            column, fault = self._planned(request, axis, reading)
+            anchor += np.outer(column[0, 1:] + carrier.zero_offset_m[axis], direction)
             columns.append(column)
             failure = failure or fault
         stacked = np.stack(columns, axis=-1)
         return SetpointPlan(request.effect_s, _TIME_S, frozen(stacked[0]), frozen(stacked[1]),
                             frozen(stacked[2]), frozen(stacked[3]), failure)
 
-    def _planned(self, request: PlanRequest, axis: int) -> tuple[Array, str | None]:
+    def _planned(self, request: PlanRequest, axis: int,
+                 wanted: Array) -> tuple[Array, str | None]:
         """Axis, its speed, setpoint, its speed, at start and block ends, shape (4, h + 1)."""
         carrier = self._carrier
         time_constant = float(carrier.time_constant_s[axis])
@@ -143,7 +156,7 @@ class CarrierPlanner:
         failure = None
         for _ in range(_PASSES):
             solution = self._problems[axis].solve(
-                {'wanted': request.wanted_m[:, axis] - shift, **limits})
+                {'wanted': wanted - shift, **limits})
             if solution.optimal:
                 acceleration = solution['acceleration']
             else:

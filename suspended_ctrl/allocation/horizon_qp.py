@@ -11,7 +11,7 @@ from suspended_ctrl.allocation.carrier_plan import (
 )
 from suspended_ctrl.allocation.priority_qp import RotorShare
 from suspended_ctrl.allocation.values import Allocation, AllocationInputs
-from suspended_ctrl.allocation.wanted_anchor import wanted_anchor
+from suspended_ctrl.allocation.wanted_anchor import needed_force
 from suspended_ctrl.physics.carrier import carrier_step
 from suspended_ctrl.physics.reference import held, Reference
 from suspended_ctrl.physics.values import CarrierPlan
@@ -123,7 +123,7 @@ class HorizonQp:
         seen = self._seen
         axis, axis_speed, setpoint, speed = self._expected(t, effect)
         return PlanRequest(effect, frozen(axis), frozen(axis_speed), frozen(setpoint),
-                           frozen(speed), frozen(self._wanted(effect, seen)))
+                           frozen(speed), frozen(self._needed(effect, seen)))
 
     def _expected(self, t: float, effect: float) -> tuple[Array, Array, Array, Array]:
         """Axes, their speeds, setpoints, their speeds at ``effect``, by the plan in force."""
@@ -137,7 +137,8 @@ class HorizonQp:
             place, speed = carrier_step(carrier, place, speed, target, dt)
         return place, speed, *self._plan.setpoint_at(effect)
 
-    def _wanted(self, effect: float, seen: AllocationInputs) -> Array:
+    def _needed(self, effect: float, seen: AllocationInputs) -> Array:
+        """Hook and force that the reference asks for at the block ends, shape (h, 6)."""
         reference = seen.reference
         if reference is None:
             if self._hold is None:
@@ -146,16 +147,13 @@ class HorizonQp:
         else:
             self._hold = None
         points = [reference.at(effect + ahead) for ahead in HORIZON_S]
-        carrier, tether = self.rig.carrier, self.rig.tether
         assert self._disturbance is not None
-        anchor = wanted_anchor(
+        needed: Array = needed_force(
             np.array([p.position_map_m for p in points]),
             np.array([p.quaternion_wxyz for p in points]),
             np.array([p.acceleration_map_m_s2 for p in points]), self._disturbance,
-            tether.hook_m, seen.body.mass_kg, carrier.anchor_m, tether.rest_length_m,
-            tether.stiffness_n_per_m, tether.slack_margin_n)
-        wanted: Array = anchor @ carrier.direction_map.T - carrier.zero_offset_m
-        return wanted
+            self.rig.tether.hook_m, seen.body.mass_kg)
+        return needed
 
     def solve_plan(self, request: PlanRequest) -> SetpointPlan:
         """Solve a request here; another process uses a ``CarrierPlanner`` of its own."""
