@@ -206,8 +206,11 @@ class ErrorStateFilter(MovingState):
         wide[6:9], wide[9:12] = (moved / refused_s)**2, (turned / refused_s)**2
         self.p[np.diag_indices(ERRORS)] += wide
         self.lag[:] = 0.0
-        self.offset_s, self.offset_variance_s2 = 0.0, OFFSET_SPREAD_S**2
-        return self._correct_pose(math.inf, 0.0)
+        self.offset_s = 0.0
+        taken = self._correct_pose(math.inf, 0.0)
+        # The correction has left the variance that it was given, zero, and the monitor deaf.
+        self.offset_variance_s2 = OFFSET_SPREAD_S**2
+        return taken
 
     def _open_disturbance(self) -> None:
         push = PUSH_SHARE_OF_WEIGHT * self.body.vector[0] * self.body.vector[25]
