@@ -62,7 +62,7 @@ class EffortAllocator:
                  strategy: Allocator | None = None) -> None:
         self.rig = rig
         self.settings = settings
-        self._strategy = strategy or ALLOCATORS.maker(settings.allocator)(rig)
+        self._use(strategy or ALLOCATORS.maker(settings.allocator)(rig))
         self._model = RotorModel(rig.rotors, rig.body.centre_of_mass_m)
         self._lead = Lead(rig, settings.transport_s, settings.lag_gain)
         self._rotors = RotorObserver(
@@ -88,8 +88,13 @@ class EffortAllocator:
 
     def swap(self, allocator: str, strategy: Allocator) -> None:
         """Change to a strategy of this rig, made by the maker of that name."""
-        self._strategy = strategy
+        self._use(strategy)
         self.settings = replace(self.settings, allocator=allocator)
+
+    def _use(self, strategy: Allocator) -> None:
+        self._strategy = strategy
+        # Asking a protocol takes longer than the tick's arithmetic.
+        self._planner = strategy if isinstance(strategy, PlanningAllocator) else None
 
     def step(self, t: float, inputs: EffortInputs) -> EffortOutputs:
         """
@@ -148,19 +153,19 @@ class EffortAllocator:
             None unless a period is over, the rotors turn and the strategy plans.
 
         """
-        if self._state not in TURNING or not isinstance(self._strategy, PlanningAllocator):
+        if self._state not in TURNING or self._planner is None:
             return None
-        return self._strategy.plan_request(t)
+        return self._planner.plan_request(t)
 
     def solve_plan(self, request: PlanRequest) -> CarrierPlan:
         """Solve a request here; it may take milliseconds and belongs outside the tick."""
-        assert isinstance(self._strategy, PlanningAllocator)
-        return self._strategy.solve_plan(request)
+        assert self._planner is not None
+        return self._planner.solve_plan(request)
 
     def take_plan(self, plan: CarrierPlan) -> None:
         """Bring the answer to a request, from here or from another process."""
-        if isinstance(self._strategy, PlanningAllocator):
-            self._strategy.take_plan(plan)
+        if self._planner is not None:
+            self._planner.take_plan(plan)
 
     # ------------------------------------------------------------ what is known
 

@@ -5,10 +5,13 @@ The lag inversion multiplies what it is fed by its gain, so it is fed the model'
 no noise, with telemetry let in through a small gain only.
 """
 
+from numba import types
 import numpy as np
+from numpy.typing import NDArray
 
 from suspended_ctrl.physics.kernel import (
     kernel,
+    OUT_FLAGS,
     OUT_MATRIX,
     OUT_VECTOR,
     REAL,
@@ -18,6 +21,8 @@ from suspended_ctrl.physics.rotor import lagged_speed
 from suspended_ctrl.physics.values import RotorSample
 from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Rotors
+
+Flags = NDArray[np.bool_]
 
 # Share of a telemetry error taken into the model each sample: 1 % noise comes through at 0.1 %,
 # while a lag known wrong by a fifth leaves 10 % of a step's size for under a tenth of a second.
@@ -35,34 +40,55 @@ _BACK_SAMPLES = 60
 _KEPT = 48
 
 
-@kernel(OUT_VECTOR(REAL, VECTOR, OUT_MATRIX))
-def _at(t: float, times: Array, speeds: Array) -> Array:
-    """Speeds at ``t`` from rows of rising ``times``, linear between."""
+@kernel(types.void(REAL, VECTOR, OUT_MATRIX, VECTOR, OUT_VECTOR, OUT_VECTOR, OUT_FLAGS))
+def _correct(stamp: float, times: Array, speeds: Array, measured: Array, speed: Array,
+             count: Array, healthy: Flags) -> None:
+    """
+    Let telemetry in and judge by it who follows, in place.
+
+    Parameters
+    ----------
+    stamp : float
+        Of the telemetry.
+    times : ndarray, shape (m,)
+        Rising; minus infinity where there is no row yet.
+    speeds : ndarray, shape (m, n)
+        What the model went through.
+    measured : ndarray, shape (n,)
+        The telemetry.
+    speed : ndarray, shape (n,)
+        The model now.
+    count : ndarray, shape (n,)
+        Samples in a row outside the window, below zero those inside it.
+    healthy : ndarray of bool, shape (n,)
+        Who follows.
+
+    """
     last = times.shape[0] - 1
-    out = np.empty(speeds.shape[1])
     k = 0
-    while k < last - 1 and times[k + 1] < t:
+    while k < last - 1 and times[k + 1] < stamp:
         k += 1
     span = times[k + 1] - times[k]
-    # Before the first step there are no rows: times of minus infinity.
-    share = min(max((t - times[k]) / span, 0.0), 1.0) if 0.0 < span < np.inf else 1.0
-    for i in range(out.shape[0]):
-        out[i] = speeds[k, i] + share * (speeds[k + 1, i] - speeds[k, i])
-    return out
-
-
-@kernel(OUT_VECTOR(REAL, VECTOR, OUT_MATRIX, VECTOR))
-def _outside(since: float, times: Array, speeds: Array, measured: Array) -> Array:
-    """How far each measured speed is outside what the model went through from ``since`` on."""
-    out = np.empty(measured.shape[0])
-    for i in range(out.shape[0]):
+    share = min(max((stamp - times[k]) / span, 0.0), 1.0) if 0.0 < span < np.inf else 1.0
+    for i in range(measured.shape[0]):
         low, high = np.inf, -np.inf
-        for k in range(times.shape[0]):
-            if times[k] >= since:
-                low = min(low, speeds[k, i])
-                high = max(high, speeds[k, i])
-        out[i] = max(low - measured[i], measured[i] - high, 0.0)
-    return out
+        for row in range(times.shape[0]):
+            if times[row] >= stamp - _WINDOW_S:
+                low = min(low, speeds[row, i])
+                high = max(high, speeds[row, i])
+        outside = max(low - measured[i], measured[i] - high)
+        if outside > _OFF_RAD_S + _OFF_SHARE * abs(measured[i]):
+            count[i] = max(count[i], 0.0) + 1.0
+        else:
+            count[i] = min(count[i], 0.0) - 1.0
+        healthy[i] = count[i] < _OFF_SAMPLES if healthy[i] else count[i] < -_BACK_SAMPLES
+        # The model of a rotor that is out is left alone: it must come to the model to be believed.
+        if healthy[i]:
+            expected = speeds[k, i] + share * (speeds[k + 1, i] - speeds[k, i])
+            change = _GAIN * (measured[i] - expected)
+            speed[i] += change
+            for row in range(times.shape[0]):
+                speeds[row, i] += change
 
 
 class RotorObserver:
@@ -92,7 +118,7 @@ class RotorObserver:
         self.measured_rad_s = np.zeros(rotors.count)
         self.healthy = np.ones(rotors.count, dtype=bool)
         self._command = np.zeros(rotors.count)
-        self._off = np.zeros(rotors.count, dtype=np.int64)
+        self._count = np.zeros(rotors.count)
         self._times = np.full(_KEPT, -np.inf)
         self._speeds = np.zeros((_KEPT, rotors.count))
         self._now: float | None = None
@@ -100,7 +126,7 @@ class RotorObserver:
     def forgive(self) -> None:
         """Take every rotor back in, as after a reset."""
         self.healthy = np.ones(self._rotors.count, dtype=bool)
-        self._off[:] = 0
+        self._count[:] = 0.0
 
     def advance(self, t: float) -> None:
         """Let the last command act until the one of the step at ``t`` arrives."""
@@ -124,18 +150,10 @@ class RotorObserver:
             self._speeds[-1] = measured
             self.measured_rad_s = measured
             return
-        error = measured - _at(sample.stamp_s, self._times, self._speeds)
-        outside = _outside(sample.stamp_s - _WINDOW_S, self._times, self._speeds, measured)
-        off = outside > _OFF_RAD_S + _OFF_SHARE * np.abs(measured)
-        # Counts up while off, from below zero while a rotor that was out follows again.
-        self._off = np.where(off, np.maximum(self._off, 0) + 1, np.minimum(self._off, 0) - 1)
-        self.healthy = np.where(self.healthy, self._off < _OFF_SAMPLES,
-                                self._off < -_BACK_SAMPLES)
-        self.measured_rad_s = measured
-        # The model of a rotor that is out is left alone: it must come to the model to be believed.
-        taken = np.where(self.healthy, _GAIN * error, 0.0)
-        self.speed_rad_s = self.speed_rad_s + taken
-        self._speeds += taken
+        speed = self.speed_rad_s.copy()
+        healthy = self.healthy.copy()
+        _correct(sample.stamp_s, self._times, self._speeds, measured, speed, self._count, healthy)
+        self.speed_rad_s, self.healthy, self.measured_rad_s = speed, healthy, measured
 
     def commanded(self, speed_rad_s: Array) -> None:
         """Note the command of this step."""

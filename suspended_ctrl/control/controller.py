@@ -1,23 +1,27 @@
 """The wrench controller: chooses what to follow, looks ahead to the felt moment, asks the law."""
 
 from dataclasses import dataclass, replace
+import math
 
 import numpy as np
 
 from suspended_ctrl.control.laws import Law, LAWS
 from suspended_ctrl.control.stop_path import path_to_rest
 from suspended_ctrl.control.values import ControlInputs, ControlOutputs, LawInputs
+from suspended_ctrl.physics.constants import GRAVITY_M_S2
 from suspended_ctrl.physics.equilibrium import anchor_at_zero, equilibrium
 from suspended_ctrl.physics.lead import Lead, PlatformState
 from suspended_ctrl.physics.loaded_body import loaded_body
-from suspended_ctrl.physics.reference import held, Reference, SPACING_MAX_S
+from suspended_ctrl.physics.reference import held, Reference, ReferencePoint
 from suspended_ctrl.physics.values import CarrierPlan, Estimate, Wrench
 from suspended_ctrl.rig.frozen import Array
 from suspended_ctrl.rig.rig import Rig
 
-# A demand counts as saturated when what is achieved misses it by this share of the weight or of a
-# newton metre: well above the allocator's own trade of effort against accuracy.
+# A demand counts as saturated when what is achieved misses it by this share of the weight: well
+# above the allocator's own trade of effort against accuracy.
 _SATURATED_SHARE = 0.02
+# Torque is held to the same share of the weight on this arm.
+_SATURATED_ARM_M = 0.1
 # A path that starts further off than this is not chased.
 JOIN_WITHIN_M = 0.1
 
@@ -131,8 +135,9 @@ class WrenchController:
         felt = self.lead.predict(estimate, t, self._body)
         reference = self._choose(t, inputs.safety_state, estimate, felt)
         felt_s = t + self.lead.lead_s
+        point = reference.at(felt_s)
         law_inputs = LawInputs(
-            estimate, felt, reference.at(felt_s), self._feedforward(reference, felt_s), reference,
+            estimate, felt, point, self._feedforward(reference, point, felt_s), reference,
             self._body, self._anchor, self._plan, self._achieved, self._saturated())
         demand = self._law.step(t, law_inputs)
         self._demand = demand
@@ -194,20 +199,17 @@ class WrenchController:
             goal = equilibrium(self.rig, self._anchor, self._payload_kg).position_map_m
         self._followed = path_to_rest(start, felt, goal)
 
-    def _feedforward(self, reference: Reference, felt_s: float) -> Array:
+    def _feedforward(self, reference: Reference, point: ReferencePoint, felt_s: float) -> Array:
         """Take the bend that a first-order lag adds out of the wanted acceleration."""
-        h = SPACING_MAX_S
-        now = reference.at(felt_s).acceleration_map_m_s2
-        before = reference.at(felt_s - h).acceleration_map_m_s2
-        after = reference.at(felt_s + h).acceleration_map_m_s2
-        bend = (after - 2.0 * now + before) / (h * h)
-        corrected: Array = now - 0.5 * self.lead.lag_s ** 2 * bend
+        bend = reference.acceleration_bend(felt_s)
+        corrected: Array = point.acceleration_map_m_s2 - 0.5 * self.lead.lag_s ** 2 * bend
         return corrected
 
     def _saturated(self) -> bool:
         if self._achieved is None or self._demand is None:
             return False
-        missed = np.abs(self._demand.vector() - self._achieved.vector())
-        weight = self._body.mass_kg * 9.80665
-        return bool(missed[:3].max() > _SATURATED_SHARE * weight
-                    or missed[3:].max() > _SATURATED_SHARE * weight * 0.1)
+        force = self._demand.force_body_n - self._achieved.force_body_n
+        torque = self._demand.torque_body_nm - self._achieved.torque_body_nm
+        most = _SATURATED_SHARE * self._body.mass_kg * GRAVITY_M_S2
+        return (math.sqrt(float(force @ force)) > most
+                or math.sqrt(float(torque @ torque)) > most * _SATURATED_ARM_M)

@@ -152,7 +152,8 @@ def _nothing_to_plan(axes: int) -> PlanRequest:
     """Make a request for a carrier that is where it should be."""
     still = np.zeros(axes)
     return PlanRequest(effect_s=0.0, axis_m=still, axis_speed_m_s=still, setpoint_m=still,
-                       setpoint_speed_m_s=still, wanted_m=np.zeros((len(HORIZON_S), axes)))
+                       setpoint_speed_m_s=still,
+                       needed=np.tile([0.0, 0.0, 0.0, 0.0, 0.0, 1.0], (len(HORIZON_S), 1)))
 
 
 def main() -> int:

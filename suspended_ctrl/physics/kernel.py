@@ -27,6 +27,7 @@ MATRIX = types.Array(types.float64, 2, 'C', readonly=True)
 FLAGS = types.Array(types.boolean, 1, 'C', readonly=True)
 OUT_VECTOR = types.Array(types.float64, 1, 'C')
 OUT_MATRIX = types.Array(types.float64, 2, 'C')
+OUT_FLAGS = types.Array(types.boolean, 1, 'C')
 
 
 def _cache_directory() -> str:

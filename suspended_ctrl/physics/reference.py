@@ -85,6 +85,19 @@ def _sample(t: float, time: Array, position: Array, velocity: Array, acceleratio
     return out
 
 
+@kernel(OUT_VECTOR(REAL, REAL, VECTOR, MATRIX, MATRIX, MATRIX, MATRIX, MATRIX, MATRIX))
+def _bend(t: float, step: float, time: Array, position: Array, velocity: Array,
+          acceleration: Array, quaternion: Array, rate: Array, rate_dot: Array) -> Array:
+    """Second difference of the acceleration over ``step``."""
+    out = np.empty(3)
+    before = _sample(t - step, time, position, velocity, acceleration, quaternion, rate, rate_dot)
+    now = _sample(t, time, position, velocity, acceleration, quaternion, rate, rate_dot)
+    after = _sample(t + step, time, position, velocity, acceleration, quaternion, rate, rate_dot)
+    for i in range(3):
+        out[i] = (after[6 + i] - 2.0 * now[6 + i] + before[6 + i]) / (step * step)
+    return out
+
+
 @dataclass(frozen=True, eq=False, slots=True)
 class ReferencePoint:
     """Where the platform should be at one moment; rates as in the module's head."""
@@ -138,6 +151,14 @@ class Reference:
                       self.acceleration_map_m_s2, self.quaternion_wxyz, self.rate_body_rad_s,
                       self.rate_dot_body_rad_s2)
         return ReferencePoint(row[:3], row[3:6], row[6:9], row[9:13], row[13:16], row[16:])
+
+    def acceleration_bend(self, t: float) -> Array:
+        """Second derivative of the acceleration around host time ``t``, m/s^4, shape (3,)."""
+        out: Array = _bend(
+            t - self.start_s, SPACING_MAX_S, self.time_s, self.position_map_m,
+            self.velocity_map_m_s, self.acceleration_map_m_s2, self.quaternion_wxyz,
+            self.rate_body_rad_s, self.rate_dot_body_rad_s2)
+        return out
 
 
 def held(position_map_m: Array, quaternion_wxyz: Array, t: float) -> Reference:

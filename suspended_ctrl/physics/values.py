@@ -8,6 +8,7 @@ mass.
 """
 
 from dataclasses import dataclass, field
+import math
 
 import numpy as np
 
@@ -150,8 +151,9 @@ class Wrench:
 
     def finite(self) -> bool:
         """Whether every component is a finite number."""
-        parts = self.force_body_n, self.torque_body_nm
-        return all(bool(np.isfinite(part).all()) for part in parts)
+        # One of them not finite makes the sum of squares so.
+        force, torque = self.force_body_n, self.torque_body_nm
+        return math.isfinite(float(force @ force) + float(torque @ torque))
 
 
 # ---------------------------------------------------------------- commands
