@@ -155,10 +155,15 @@ class HorizonQp:
             self.rig.tether.hook_m, seen.body.mass_kg)
         return needed
 
-    def solve_plan(self, request: PlanRequest) -> SetpointPlan:
-        """Solve a request here; another process uses a ``CarrierPlanner`` of its own."""
+    def prepare(self) -> None:
+        """Compile the planner's problems now, not when the first plan is asked for."""
         if self._planner is None:
             self._planner = CarrierPlanner(self.rig)
+
+    def solve_plan(self, request: PlanRequest) -> SetpointPlan:
+        """Solve a request here; another process uses a ``CarrierPlanner`` of its own."""
+        self.prepare()
+        assert self._planner is not None
         return self._planner.solve(request)
 
     def take_plan(self, plan: CarrierPlan) -> None:

@@ -11,8 +11,7 @@ from rcl_interfaces.msg import SetParametersResult
 from rclpy.parameter import Parameter
 
 from suspended_ctrl.allocation.allocator import EffortAllocator
-from suspended_ctrl.allocation.allocators import Allocator, ALLOCATORS, PlanningAllocator
-from suspended_ctrl.allocation.carrier_plan import HORIZON_S, PlanRequest
+from suspended_ctrl.allocation.allocators import Allocator, ALLOCATORS
 from suspended_ctrl.allocation.settings import EffortSettings
 from suspended_ctrl.allocation.values import EffortInputs
 from suspended_ctrl.nodes.estimate_inbox import EstimateInbox
@@ -132,10 +131,10 @@ class EffortAllocatorNode(ManagedNode):
 
     def _prepare(self, allocator: str) -> tuple[str, Allocator]:
         strategy = ALLOCATORS.maker(allocator)(self.rig)
-        axes = len(self.rig.carrier.axes)
-        # What compiles when it first plans must not do so while the rig is live.
-        if axes and isinstance(strategy, PlanningAllocator):
-            strategy.solve_plan(_nothing_to_plan(axes))
+        # What an allocator compiles when it is first needed must not be so while the rig is live.
+        prepare = getattr(strategy, 'prepare', None)
+        if prepare is not None:
+            prepare()
         return allocator, strategy
 
     def _have_set(self, changes: list[Parameter]) -> None:
@@ -146,14 +145,6 @@ class EffortAllocatorNode(ManagedNode):
                     self.part.swap(*self._prepared)
                     self.get_logger().info(f'allocator: {change.value}')
                 self._prepared = None
-
-
-def _nothing_to_plan(axes: int) -> PlanRequest:
-    """Make a request for a carrier that is where it should be."""
-    still = np.zeros(axes)
-    return PlanRequest(effect_s=0.0, axis_m=still, axis_speed_m_s=still, setpoint_m=still,
-                       setpoint_speed_m_s=still,
-                       needed=np.tile([0.0, 0.0, 0.0, 0.0, 0.0, 1.0], (len(HORIZON_S), 1)))
 
 
 def main() -> int:

@@ -19,6 +19,8 @@ from suspended_ctrl.rig.file import load_rig
 from suspended_ctrl.rig.rig import Rig
 
 _REPORT_EVERY_S = 1.0
+# A turn makes hundreds of objects and hardly a cycle.
+_COLLECT = (20_000, 20, 20)
 
 
 class ManagedNode(LifecycleNode):
@@ -173,6 +175,7 @@ class ManagedNode(LifecycleNode):
         # What is there now stays: collections need not look at it again.
         gc.collect()
         gc.freeze()
+        gc.set_threshold(*_COLLECT)
         self.active = True
 
     def _clean(self) -> None:

@@ -7,10 +7,10 @@ import time
 from typing import Any
 
 from rclpy.node import Node
-from rclpy.qos import QoSProfile
+from rclpy.qos import QoSProfile, ReliabilityPolicy
 
 from suspended_ctrl.nodes.channels import Emptied
-from suspended_ctrl.nodes.topics import message_class, QOS
+from suspended_ctrl.nodes.topics import latched, message_class, QOS
 from suspended_ctrl.review.bag import BagWriter
 from suspended_ctrl.review.log import RunFacts
 from suspended_ctrl.review.mcap_file import Channel
@@ -29,10 +29,13 @@ class _Line:
         self.channel = channel
         self.watchers: list[Callable[[bytes], None]] = []
         self.count = 0
+        # A recording must not cost the nodes an answer to every message: what holds until the
+        # next message is asked for reliably, of everything else it takes what comes.
+        reliability = (ReliabilityPolicy.RELIABLE if latched(topic.name)
+                       else ReliabilityPolicy.BEST_EFFORT)
         subscription = node.create_subscription(
             message_class(topic.message_type), topic.name, lambda _: None,
-            QoSProfile(depth=_DEPTH, reliability=profile.reliability,
-                       durability=profile.durability),
+            QoSProfile(depth=_DEPTH, reliability=reliability, durability=profile.durability),
             callback_group=Emptied(), raw=True)
         self.handle: Any = subscription.handle
         self.message_class = subscription.msg_type

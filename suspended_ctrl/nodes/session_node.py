@@ -1,5 +1,6 @@
 """The session's own node: records the graph, hears what matters in it, asks its services."""
 
+from collections.abc import Mapping
 from pathlib import Path
 import time
 from typing import Any
@@ -21,8 +22,8 @@ from suspended_ctrl.review.topics import JointNames, TOPICS
 from suspended_ctrl.rig.rig import Rig
 
 READY_FOR_S = 1.0
-_SERVICES: dict[str, Any] = {'safety/enable': SetBool, 'safety/stop': Trigger,
-                             'mission/start': Trigger}
+SERVICES: Mapping[str, Any] = {'safety/enable': SetBool, 'safety/stop': Trigger,
+                                'mission/start': Trigger}
 
 
 class SessionNode:
@@ -35,6 +36,8 @@ class SessionNode:
     domain : int
     namespace : str
     recording : Path
+    services : mapping of str to type
+        Those that it asks.
 
     Attributes
     ----------
@@ -47,7 +50,8 @@ class SessionNode:
 
     """
 
-    def __init__(self, rig: Rig, domain: int, namespace: str, recording: Path) -> None:
+    def __init__(self, rig: Rig, domain: int, namespace: str, recording: Path,
+                 services: Mapping[str, Any] = SERVICES) -> None:
         self.state = 'locked'
         self.cause = ''
         self._since_s = time.monotonic()
@@ -63,7 +67,7 @@ class SessionNode:
         self._executor = SingleThreadedExecutor(context=self._context)
         self._executor.add_node(self._node)
         self._clients: dict[str, Client] = {
-            name: self._node.create_client(kind, name) for name, kind in _SERVICES.items()}
+            name: self._node.create_client(kind, name) for name, kind in services.items()}
         self._asked: list[Future] = []
         names = JointNames(rig.rotors.names, rig.carrier.axes)
         self._recorder = Recorder(self._node, names, recording)
