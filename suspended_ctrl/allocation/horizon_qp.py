@@ -138,7 +138,7 @@ class HorizonQp:
         return place, speed, *self._plan.setpoint_at(effect)
 
     def _needed(self, effect: float, seen: AllocationInputs) -> Array:
-        """Hook and force that the reference asks for at the block ends, shape (h, 6)."""
+        """Return hook and force that the reference asks for at the block ends, shape (h, 6)."""
         reference = seen.reference
         if reference is None:
             if self._hold is None:

@@ -14,7 +14,7 @@ _ROUNDS = 6
 def needed_force(position: Array, quaternion: Array, acceleration: Array, disturbance: Array,
                  hook: Array, mass: float) -> Array:
     """
-    Hook and force that a reference asks for.
+    Compute the hook and the force that a reference asks for.
 
     Parameters
     ----------

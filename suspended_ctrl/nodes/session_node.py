@@ -23,7 +23,7 @@ from suspended_ctrl.rig.rig import Rig
 
 READY_FOR_S = 1.0
 SERVICES: Mapping[str, Any] = {'safety/enable': SetBool, 'safety/stop': Trigger,
-                                'mission/start': Trigger}
+                               'mission/start': Trigger}
 
 
 class SessionNode:
