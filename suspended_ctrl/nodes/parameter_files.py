@@ -20,6 +20,7 @@ def check_file(path: str | os.PathLike[str]) -> dict[str, dict[str, Any]]:
     Parameters
     ----------
     path : path-like
+        The file.
 
     Returns
     -------

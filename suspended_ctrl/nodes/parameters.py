@@ -177,7 +177,9 @@ def check_seen(files: Sequence[str], name: str, namespace: str) -> None:
     Parameters
     ----------
     files : sequence of str
+        Parameter files of the call.
     name : str
+        Of the executable.
     namespace : str
         Of the node; ``/`` for none.
 

@@ -65,6 +65,11 @@ def junk(kind: str, stamp_s: object, a: object, b: object) -> object:
     }[kind]
 
 
+WALK_LIMITS = ('tilt', 'speed', 'rates', 'unsure', 'invalid', 'rotor', 'peer', 'mission')
+# The message without which the supervisor cannot know; the others are told by every tick.
+TOLD_BY = dict.fromkeys(('tilt', 'speed', 'rates', 'unsure', 'invalid'), 'odometry')
+
+
 class Walk(Cell):
     """A cell whose events come from outside and whose outputs are judged at every tick."""
 
@@ -74,6 +79,8 @@ class Walk(Cell):
         self.heard = dict.fromkeys(SENDERS, -np.inf)
         self.pressed = False
         self.broken: set[str] = set()
+        # Of those, what a message has told the supervisor.
+        self.told: set[str] = set()
         self.enabled_since_trip = False
         self.power_without_live_s = 0.0
         self.good_demand: np.ndarray | None = None
@@ -101,6 +108,9 @@ class Walk(Cell):
 
     def step(self, *requests: str, dt: float = WALK_TICK_S) -> None:
         """One tick, judged."""
+        for limit in WALK_LIMITS:
+            if TOLD_BY.get(limit) not in self.silent:
+                (self.told.add if limit in self.broken else self.told.discard)(limit)
         out = self.tick(*requests, dt=dt)
         for name in SENDERS:
             if name not in self.silent:
@@ -203,7 +213,7 @@ class Walk(Cell):
         assert any(r.request == 'enable' and r.success for r in out.replies)
         assert not self.pressed
         # A weak rotor does not show while it stands; the mission player is not required.
-        wrong = self.broken - {'rotor', 'mission'}
+        wrong = self.told - {'rotor', 'mission'}
         assert not wrong, wrong
         for name, age in FRESH_S.items():
             assert self.t - self.heard[name] <= age + 1e-6, name

@@ -5,12 +5,11 @@ import itertools
 
 from hypothesis import strategies as st
 import numpy as np
-from random_walk import ARRAYS, KINDS, REQUESTS, SENDERS, Walk, WEIRD
+from random_walk import ARRAYS, KINDS, REQUESTS, SENDERS, Walk, WALK_LIMITS, WEIRD
 
 from suspended_ctrl.rig.file import load_rig
 from suspended_ctrl.rig.rig import Rig
 
-LIMITS = ('tilt', 'speed', 'rates', 'unsure', 'invalid', 'rotor', 'peer', 'mission')
 BAD_DEMANDS = (None, None, np.full(8, np.nan), np.full(8, 2000.0), np.full(7, 300.0),
                np.array([]), 'fast')
 SHIFTS_S = (0.0, 0.0, -0.5, 0.5, -3600.0, 3600.0, np.nan, np.inf, -np.inf)
@@ -28,7 +27,7 @@ def _table() -> tuple[tuple[object, ...], ...]:
         [('request', 'enable')],
         list(itertools.product(('hear',), SENDERS, switch)),
         list(itertools.product(('press',), switch)),
-        list(itertools.product(('break_limit',), LIMITS, switch)),
+        list(itertools.product(('break_limit',), WALK_LIMITS, switch)),
         [('spoil_demand', k) for k in range(len(BAD_DEMANDS))],
         [('shift_demand', s) for s in SHIFTS_S],
         [('jump_clock', s) for s in (0.0, -2.0, 2.0, 0.05)],
